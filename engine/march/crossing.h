@@ -8,6 +8,7 @@
 // p - K t^2 (1-t)^2 is a quartic; positive Bernstein coefficients prove that it has no zero.
 #pragma once
 
+#include <algorithm>
 #include <cmath>
 
 namespace couplet {
@@ -27,7 +28,7 @@ struct GuardStep {
   double margin() const {
     const double b1 = v0 + d0 / 3, b2 = v1 - d1 / 3;
     const double q1 = (v0 + 3 * b1) / 4, q2 = (b1 + b2) / 2 - doubt() / 6, q3 = (3 * b2 + v1) / 4;
-    return std::fmin(std::fmin(q1, q2), std::fmin(q3, v1));
+    return std::min(std::min(q1, q2), std::min(q3, v1));
   }
   /// Smallest value of the cubic on [0, 1] and where.
   double lowest(double& where) const;

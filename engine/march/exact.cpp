@@ -16,7 +16,7 @@ constexpr double roundoff = 1.0 / (1ULL << 44);
 // Round-off of a form's slope: slopes are products with rates that cancel more, hence looser.
 constexpr double slope_roundoff = 1.0 / (1ULL << 38);
 constexpr int most_standing_events = 1000;
-constexpr double growth = 4;  // of the step after one that was clear
+constexpr double growth = 2;  // of the step after one that was clear
 
 double now() { return std::chrono::duration<double>(std::chrono::steady_clock::now().time_since_epoch()).count(); }
 
