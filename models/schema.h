@@ -24,8 +24,8 @@ struct Key {
   double high = std::numeric_limits<double>::infinity();
   bool toleranced = true;           // may carry { value, tolerance }
   Type type = Type::quantity;
-  std::vector<std::string> words;   // allowed, where type is word
-  std::string second_unit;          // tables are lists of pairs [first, second]: unit of the second
+  std::vector<std::string> words = {};   // allowed, where type is word
+  std::string second_unit = {};      // tables are lists of pairs [first, second]: unit of the second
 };
 
 /// A rating that a netlist may state under [parts.NAME.ratings]; `figure` is the figure it bounds from above

@@ -1,0 +1,38 @@
+// SPDX-License-Identifier: MIT
+// Largest and smallest value of every watched quantity over a march, and when. Between the ends of a span an extreme is
+// sought where the slope changes its sign, and refined on the march's own interpolant: the error of an extreme is of
+// second order in the error of its time.
+#pragma once
+
+#include "engine/figures/quantities.h"
+#include "engine/march/kernel.h"
+#include "engine/march/march.h"
+
+namespace couplet {
+
+class Extremes : public Observer {
+ public:
+  struct Range {
+    double low = std::numeric_limits<double>::infinity(), high = -std::numeric_limits<double>::infinity();
+    double low_when = 0, high_when = 0;
+  };
+  explicit Extremes(const Quantities& quantities);
+  void span(const Span& span) override;
+  void clear();
+  const std::vector<Range>& ranges() const { return ranges_; }
+  const Quantities& quantities() const { return quantities_; }
+
+ private:
+  const Buffer& rows(const Topology& topology);
+  void refine(const Span& span, const Buffer& rows, int quantity, double h, const double* slopes0, const double* slopes1);
+
+  const Quantities& quantities_;
+  int count_, stride_;
+  std::vector<Buffer> rows_;  // by topology: values and slopes, 2 * stride_ rows
+  std::vector<Range> ranges_;
+  Buffer first_, last_, state_, between_;
+  int last_topology_ = -1;
+  double last_time_ = 0;
+};
+
+}  // namespace couplet
