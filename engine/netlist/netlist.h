@@ -19,8 +19,8 @@ struct Place {
 
 /// A value with everything a netlist may say of it. `given` names the [given] entry it follows, or is empty.
 struct Quantity {
-  double value = 0;   // SI
-  std::string unit;   // SI unit, for print
+  double value = 0;  // SI
+  std::string unit;  // SI unit, for print
   std::string given;
   std::optional<double> tolerance;  // relative, half width (0.05 for 5 %)
   std::string origin;               // "measured", "datasheet p. 4", "guessed": free text, may be empty
@@ -40,7 +40,7 @@ struct PartEntry {
   std::map<std::string, Quantity> values;    // by key, defaults filled in
   std::map<std::string, std::string> words;
   std::map<std::string, std::vector<std::pair<double, double>>> tables;
-  std::map<std::string, Quantity> ratings;   // by rating name
+  std::map<std::string, Quantity> ratings;  // by rating name
   Place place;
 };
 
@@ -69,22 +69,22 @@ struct Limit {
 
 /// What to record and for how long to march. Absent: decided by the program, which says what it chose.
 struct RunSettings {
-  std::optional<double> duration;           // s, of `couplet start`
-  std::optional<double> step_ceiling;       // s
-  std::vector<std::string> record;          // signals; empty: all node voltages, coil and part currents
-  std::optional<int> points_per_period;     // of full detail
-  std::string section;                      // "voltage of NODE - NODE" or empty: chosen by the program
-  std::optional<int> window_periods;        // of the figures' window
+  std::optional<double> duration;        // s, of `couplet start`
+  std::optional<double> step_ceiling;    // s
+  std::vector<std::string> record;       // signals; empty: all node voltages, coil and part currents
+  std::optional<int> points_per_period;  // of full detail
+  std::string section;                   // "voltage of NODE - NODE" or empty: chosen by the program
+  std::optional<int> window_periods;     // of the figures' window
 };
 
 struct Design {
   std::string file, text, sha256;
   std::string title;
-  std::string rail;                    // node
-  std::string load, regulator;         // parts; may be empty
-  std::vector<std::string> supplies;   // parts; those of role source where the netlist does not say
+  std::string rail;                   // node
+  std::string load, regulator;        // parts; may be empty
+  std::vector<std::string> supplies;  // parts; those of role source where the netlist does not say
   std::vector<std::string> assumptions, not_modelled;  // free text for the page
-  double derating = 1;                 // ratings are judged at this share
+  double derating = 1;                                 // ratings are judged at this share
   std::vector<Given> given;
   std::vector<PartEntry> parts;
   std::vector<CouplingEntry> couplings;
@@ -103,8 +103,9 @@ struct Design {
   std::vector<std::string> settable() const;
 };
 
-/// All complaints of a netlist or a call at once; what() holds them as they are to be printed, one after another, each as
-/// "FILE:LINE:COLUMN: what is wrong; what to do" followed by an excerpt with the place marked. Exit status 2.
+/// All complaints of a netlist or a call at once; what() holds them as they are to be printed, one after
+/// another, each as "FILE:LINE:COLUMN: what is wrong; what to do" followed by an excerpt with the place
+/// marked. Exit status 2.
 class InputError : public std::runtime_error {
  public:
   explicit InputError(const std::string& text) : std::runtime_error(text) {}
@@ -113,10 +114,11 @@ class InputError : public std::runtime_error {
 /// Reads and checks a netlist. `overrides` are "NAME=VALUE" texts. Throws InputError with all complaints.
 Design read_netlist(const std::string& file, const std::vector<std::string>& overrides = {});
 /// The same from text; `file` is the name used in complaints.
-Design parse_netlist(const std::string& text, const std::string& file, const std::vector<std::string>& overrides = {});
+Design parse_netlist(const std::string& text, const std::string& file,
+                     const std::vector<std::string>& overrides = {});
 
-/// The elements of all parts and couplings with the values that hold at `time` of the schedule (entries with a time
-/// at or before it applied). The order of parts, nodes and elements does not depend on values.
+/// The elements of all parts and couplings with the values that hold at `time` of the schedule (entries with
+/// a time at or before it applied). The order of parts, nodes and elements does not depend on values.
 Sheet build_sheet(const Design& design, double time = 0);
 
 }  // namespace couplet
