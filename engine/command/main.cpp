@@ -1,2 +1,68 @@
 // SPDX-License-Identifier: MIT
-int main() { return 0; }
+// The program: read the call, run one command, turn errors into one message and a status.
+#include <fmt/format.h>
+
+#include <CLI/CLI.hpp>
+#include <csignal>
+
+#include "engine/circuit/circuit.h"
+#include "engine/command/commands.h"
+
+namespace {
+
+using couplet::CommonOptions;
+
+void add_common(CLI::App* command, CommonOptions& common) {
+  command->add_option("NETLIST", common.netlist, "the design, a TOML file")->required();
+  command->add_option("--set", common.set, "NAME=VALUE: another value for a given value or PART.KEY, with its unit");
+  command->add_option("--out", common.out, "where the record goes (an existing file is kept unless --force)");
+  command->add_option("--json", common.json, "figures and verdicts as JSON to this path; - for standard output");
+  command->add_option("--plot", common.plot, "one drawing as SVG to this path");
+  command->add_option("--march", common.march, "exact, or ida for the second opinion")->check(CLI::IsMember({"exact", "ida"}));
+  command->add_flag("--force", common.force, "overwrite existing files");
+  command->add_flag("--quiet", common.quiet, "no summary, no progress");
+  command->add_flag("--verbose", common.verbose, "every part's figures, counts and times");
+}
+
+}  // namespace
+
+int main(int argc, char** argv) {
+  CLI::App app{"Couplet: checks an inductive charging link in the time domain, before coils and boards are ordered.\n"
+               "Exit status: 0 all limits met; 1 a limit is not met; 2 the input or the call is wrong; 3 not finished."};
+  app.set_version_flag("--version", COUPLET_VERSION);
+  app.require_subcommand(1);
+  app.footer("Example: couplet start netlists/dock.toml --set load=\"20 ohm\"");
+
+  couplet::StartCommand start;
+  auto* start_app = app.add_subcommand("start", "march from rest through the supply's rise and the schedule");
+  add_common(start_app, start.common);
+  start_app->add_option("--duration", start.duration, "how long to march, like \"5 ms\"");
+  start_app->add_option("--tolerance", start.tolerance, "relative tolerance of the ida march")->check(CLI::Range(1e-13, 1e-2));
+  start_app->footer("Example: couplet start netlists/dock.toml --set rise=\"20 ms\" --json -");
+
+  std::string kind;
+  auto* parts_app = app.add_subcommand("parts", "which kinds of parts there are, with keys, units and defaults");
+  parts_app->add_option("KIND", kind, "show one kind in full");
+  parts_app->footer("Example: couplet parts fet");
+
+  try {
+    app.parse(argc, argv);
+  } catch (const CLI::ParseError& error) {
+    const int code = app.exit(error);
+    return code == 0 ? 0 : couplet::status_input;
+  }
+  try {
+    if (*start_app) return couplet::start_command(start);
+    if (*parts_app) return couplet::parts_command(kind);
+  } catch (const couplet::InputError& error) {
+    fmt::print(stderr, "{}\n", error.what());
+    return couplet::status_input;
+  } catch (const couplet::CircuitError& error) {
+    fmt::print(stderr, "{}: {}\n", start.common.netlist, error.what());
+    return couplet::status_input;
+  } catch (const std::exception& error) {
+    fmt::print(stderr, "couplet: an error of the program itself: {}\n", error.what());
+    return couplet::status_unfinished;
+  }
+  return couplet::status_input;
+}

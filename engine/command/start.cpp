@@ -1,0 +1,71 @@
+// SPDX-License-Identifier: MIT
+#include <fmt/format.h>
+
+#include "engine/command/commands.h"
+#include "engine/quantity/quantity.h"
+#include "engine/study/start.h"
+
+namespace couplet {
+namespace {
+
+std::string report_json(const StartResult& r) {
+  Json json;
+  json.key("outcome").value(r.outcome);
+  json.key("march").open('{').key("sentence").value(r.report.sentence).key("steps").value(r.report.steps).key("refused").value(r.report.refused);
+  json.key("events").value(r.report.events).key("commands").value(r.report.commands).key("topologies").value(static_cast<long>(r.report.topologies));
+  json.key("seconds").value(r.report.seconds).key("seconds_building").value(r.report.seconds_building).close('}');
+  json.key("window").open('{').key("from").value(r.window_from).key("to").value(r.window_to).key("periods").value(r.window_periods).close('}');
+  json.key("ledger").open('{').key("supplied").value(r.ledger.supplied).key("dissipated").value(r.ledger.dissipated).key("to_loads").value(r.ledger.to_loads);
+  json.key("stored_change").value(r.ledger.stored_change).key("scheduled").value(r.ledger.scheduled).key("residual").value(r.ledger.residual).close('}');
+  json.key("notes").open('[');
+  for (const auto& n : r.notes) json.value(n);
+  json.close(']');
+  return json.text();
+}
+
+void print_summary(const Design& design, const StartResult& r, const CommonOptions& common) {
+  fmt::print("{}\n{}\n\n", design.title.empty() ? design.file : design.title, r.outcome);
+  if (r.window_periods > 0) {
+    fmt::print("Figures of the last {} periods ({} to {})\n", r.window_periods, print_quantity(r.window_from, "s", 6), print_quantity(r.window_to, "s", 6));
+  } else {
+    fmt::print("Figures of the last stretch ({} to {})\n", print_quantity(r.window_from, "s", 6), print_quantity(r.window_to, "s", 6));
+  }
+  fmt::print("{}", figure_table(r.figures, false));
+  fmt::print("\nWhere the power goes\n{}", loss_table(r.figures, r.sheet));
+  fmt::print("\nEnergy over the whole march: supplied {}, lost {}, to the load {}, stored {}; closes to {:.1e}\n", print_quantity(r.ledger.supplied, "J"),
+             print_quantity(r.ledger.dissipated, "J"), print_quantity(r.ledger.to_loads, "J"), print_quantity(r.ledger.stored_change, "J"), r.ledger.relative());
+  if (!r.verdicts.empty()) fmt::print("\nVerdicts, worst first\n{}", verdict_table(r.verdicts, common.verbose));
+  for (const auto& note : r.notes) fmt::print("\nNote: {}\n", note);
+  if (common.verbose) {
+    fmt::print("\nFigures of each part\n{}", figure_table(r.figures, true));
+    fmt::print("\nMarch: {}; {} steps, {} tried again shorter, {} events, {} commands, {} topologies; {:.3f} s, of which {:.3f} s building\n", r.report.sentence,
+               r.report.steps, r.report.refused, r.report.events, r.report.commands, r.report.topologies, r.report.seconds, r.report.seconds_building);
+  }
+}
+
+}  // namespace
+
+int start_command(const StartCommand& options) {
+  const Design design = read_netlist(options.common.netlist, options.common.set);
+  StartOptions start;
+  start.ida = options.common.march == "ida";
+  start.march.relative = options.tolerance;
+  if (!options.duration.empty()) {
+    const ReadQuantity d = read_quantity(options.duration, "s");
+    if (!d.problem.empty() || d.value <= 0) throw InputError("--duration: " + (d.problem.empty() ? "must be positive" : d.problem));
+    start.duration = d.value;
+  }
+  StartResult result;
+  {
+    Progress progress(options.common.quiet);
+    start.progress = [&](double share) { progress(share); };
+    result = run_start(design, start);
+  }
+  const int status = !result.report.usable() ? status_unfinished : all_met(result.verdicts) ? status_met : status_not_met;
+  if (!options.common.quiet && options.common.json != "-") print_summary(design, result, options.common);
+  if (!options.common.json.empty()) write_text(options.common.json, json_of(design, "start", status, result.figures, result.verdicts, report_json(result)));
+  if (!result.report.usable()) fmt::print(stderr, "{}: {}\n", design.file, result.report.sentence);
+  return status;
+}
+
+}  // namespace couplet
