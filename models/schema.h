@@ -32,6 +32,7 @@ struct Key {
 /// ("voltage.peak" stands for PART.voltage.peak).
 struct Rating {
   std::string name, unit, figure, help;
+  std::string of = {};  // blocks: the kind of piece it bounds; empty: every piece
 };
 
 struct Terminal {

@@ -50,6 +50,13 @@ const std::vector<Key> leg_keys = {
     {"output_capacitance", "F", "capacitance across each switch", "200 pF", 0, 1},
 };
 
+/// Ratings of a block that bound its pieces of one kind.
+std::vector<Rating> ratings_of(const std::string& piece) {
+  auto ratings = two_terminal_ratings();
+  for (auto& r : ratings) r.of = piece;
+  return ratings;
+}
+
 }  // namespace
 
 const PartKind diode_kind = {
@@ -199,7 +206,7 @@ const PartKind push_pull_kind = {
             {"bleed", "ohm", "gate to source", "10 kohm", 1, 1e12},
             {"gate_diode_drop", "V", "forward drop of the cross diodes", "0.35 V", 0, 100},
             {"gate_diode_resistance", "ohm", "slope of the cross diodes", "0.3 ohm", 1e-9, 1e6}}),
-    two_terminal_ratings(),
+    ratings_of("fet"),
     "kind = \"push_pull\"\nleft = \"left\"\nright = \"right\"\nfeed = \"vin\"\ncommon = \"gnd\"\nthreshold = "
     "\"2.0 V\"\nmismatch = \"20 mV\"",
     [](Sheet& sheet, const std::string& name, const Nodes& n, const Values& v) {

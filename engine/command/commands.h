@@ -15,6 +15,11 @@ struct StartCommand {
 };
 int start_command(const StartCommand& options);
 
+struct SettleCommand {
+  CommonOptions common;
+};
+int settle_command(const SettleCommand& options);
+
 int parts_command(const std::string& kind);
 
 }  // namespace couplet

@@ -40,6 +40,11 @@ int main(int argc, char** argv) {
   start_app->add_option("--tolerance", start.tolerance, "relative tolerance of the ida march")->check(CLI::Range(1e-13, 1e-2));
   start_app->footer("Example: couplet start netlists/dock.toml --set rise=\"20 ms\" --json -");
 
+  couplet::SettleCommand settle;
+  auto* settle_app = app.add_subcommand("settle", "find the periodic steady state, its stability and its figures");
+  add_common(settle_app, settle.common);
+  settle_app->footer("Example: couplet settle netlists/dock.toml --set factor=0.2 --verbose");
+
   std::string kind;
   auto* parts_app = app.add_subcommand("parts", "which kinds of parts there are, with keys, units and defaults");
   parts_app->add_option("KIND", kind, "show one kind in full");
@@ -53,6 +58,7 @@ int main(int argc, char** argv) {
   }
   try {
     if (*start_app) return couplet::start_command(start);
+    if (*settle_app) return couplet::settle_command(settle);
     if (*parts_app) return couplet::parts_command(kind);
   } catch (const couplet::InputError& error) {
     fmt::print(stderr, "{}\n", error.what());

@@ -57,6 +57,7 @@ std::vector<Verdict> judge(const Design& design, const Sheet& sheet, const Figur
       const auto given = part.ratings.find(rating.name);
       for (const auto& piece : sheet.parts) {
         if (piece.name != part.name && piece.name.rfind(part.name + ".", 0) != 0) continue;
+        if (!rating.of.empty() && piece.kind != rating.of) continue;
         Verdict v;
         v.name = piece.name + " " + rating.name;
         v.figure = piece.name + "." + rating.figure;

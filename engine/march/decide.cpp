@@ -155,6 +155,16 @@ std::string ExactMarch::pile_up_sentence() const {
                      state_->time, list);
 }
 
+bool ExactMarch::resume(MarchState& state, std::string& trouble) {
+  state_ = &state;
+  std::copy_n(state.x.data(), n_, x_.begin());
+  std::fill(x_.begin() + n_, x_.end(), 0.0);
+  enter(circuit_.topology(state.cells));
+  const bool good = decide(trouble);
+  state_ = nullptr;
+  return good;
+}
+
 MarchState ExactMarch::stand(const Eigen::VectorXd& xi, double time) {
   MarchState state;
   state.time = time;

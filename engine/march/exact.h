@@ -32,6 +32,10 @@ class ExactMarch : public March, private Interpolant {
   MarchReport run(MarchState& state, double until, Observer* observer) override;
   MarchState stand(const Eigen::VectorXd& xi, double time) override;
 
+  /// Decides the cells again for a state whose x was changed from outside, keeping its bits where they hold. False
+  /// where no cells fit; `trouble` says why.
+  bool resume(MarchState& state, std::string& trouble);
+
   const Circuit& circuit() const { return circuit_; }
   MarchSettings& settings() { return settings_; }
   /// Flow of a topology met so far or new.
