@@ -295,6 +295,11 @@ MarchReport ExactMarch::run(MarchState& state, double until, Observer* observer)
   Span span{&circuit_, &flow_->topology(), state.time, 0, nullptr, nullptr, this};
   Buffer shown(stride_);
   bool go_on = true;
+  // A state handed over from another lap of the same drive may stand a rounding before a command that is due now.
+  if (!apply_outside(observer)) {
+    go_on = decide(trouble);
+    if (!go_on) report_.reason = MarchReport::Reason::no_consistent_cells;
+  }
   while (go_on) {
     // The nearest instant known from outside.
     double stop = std::min(until, circuit_.next_corner(state.time));

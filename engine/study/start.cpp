@@ -38,8 +38,11 @@ class Returns : public Observer {
 class Fan : public Observer {
  public:
   std::vector<Observer*> all;
+  std::function<void(double share)> progress;
+  double duration = 1;
   void span(const Span& span) override {
     for (auto* o : all) o->span(span);
+    if (progress && ++spans_ % 1024 == 0) progress(span.start / duration);
   }
   void event(const Event& event) override {
     for (auto* o : all) o->event(event);
@@ -47,6 +50,9 @@ class Fan : public Observer {
   bool enough() const override {
     return std::any_of(all.begin(), all.end(), [](const Observer* o) { return o->enough(); });
   }
+
+ private:
+  long spans_ = 0;
 };
 
 /// Energies for marches without moments: Gauss points on the spans' interpolants.
@@ -164,6 +170,8 @@ void StartRun::begin_stage(double time, bool first) {
     returns_->follow(circuit_.get());
   }
   fan_.all = {extremes_.get(), returns_.get()};
+  fan_.progress = options_.progress;
+  fan_.duration = result_.duration;
   if (!exact_) {
     sampled_ = std::make_unique<SampledMoments>(*circuit_);
     fan_.all.push_back(sampled_.get());
@@ -203,25 +211,15 @@ void StartRun::fold_moments() {
 bool StartRun::leg(double until, long crossings) {
   if (until <= state_.time) return true;
   returns_->stop_after = crossings < 0 ? std::numeric_limits<long>::max() : returns_->count + crossings;
-  // In pieces, so that progress can be shown.
-  const int pieces = options_.progress ? 50 : 1;
-  const double from = state_.time;
-  for (int k = 1; k <= pieces; ++k) {
-    const double target = k == pieces ? until : from + (until - from) * k / pieces;
-    if (target <= state_.time) continue;
-    const MarchReport r = march_->run(state_, target, &fan_);
-    MarchReport& sum = result_.report;
-    sum.steps += r.steps, sum.refused += r.refused, sum.events += r.events, sum.commands += r.commands, sum.corners += r.corners;
-    sum.topologies = std::max(sum.topologies, r.topologies);
-    sum.seconds += r.seconds;
-    sum.seconds_building = std::max(sum.seconds_building, r.seconds_building);
-    sum.reason = r.reason;
-    sum.sentence = r.sentence;
-    if (options_.progress) options_.progress(state_.time / result_.duration);
-    if (!r.usable()) return false;
-    if (r.reason == MarchReport::Reason::observer) return true;
-  }
-  return true;
+  const MarchReport r = march_->run(state_, until, &fan_);
+  MarchReport& sum = result_.report;
+  sum.steps += r.steps, sum.refused += r.refused, sum.events += r.events, sum.commands += r.commands, sum.corners += r.corners;
+  sum.topologies = std::max(sum.topologies, r.topologies);
+  sum.seconds += r.seconds;
+  sum.seconds_building = std::max(sum.seconds_building, r.seconds_building);
+  sum.reason = r.reason;
+  sum.sentence = r.sentence;
+  return r.usable();
 }
 
 /// The window of the figures: the last whole periods before the end. False where the march failed.
