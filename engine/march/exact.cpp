@@ -129,7 +129,7 @@ ExactMarch::Finding ExactMarch::check(double h, const double* v0, const double* 
     // An unstable topology overflows over too long a step: not a number is not clear.
     if (!std::isfinite(g.doubt())) return {Outcome::unresolved, i, 0, 16};
     if (g.margin() > 0 && i != exempt) continue;
-    const Finding f = examine(g, i, x0, x1, exempt < 0 ? End::open : i == exempt ? End::own_event : End::other_event, finest);
+    const Finding f = examine(g, h, i, x0, x1, exempt < 0 ? End::open : i == exempt ? End::own_event : End::other_event, finest);
     if (f.outcome == Outcome::clear) continue;
     if (f.outcome == Outcome::unresolved) {
       if (worst.outcome != Outcome::unresolved || f.shrink > worst.shrink) worst = f;
@@ -140,10 +140,15 @@ ExactMarch::Finding ExactMarch::check(double h, const double* v0, const double* 
   return worst;
 }
 
-ExactMarch::Finding ExactMarch::examine(const GuardStep& g, int watch, const double* x0, const double* x1,
+ExactMarch::Finding ExactMarch::examine(const GuardStep& g, double h, int watch, const double* x0, const double* x1,
                                         End end, bool finest) const {
   const double tolerance0 = roundoff * flow_->watch_scale(watch, x0), tolerance1 = roundoff * flow_->watch_scale(watch, x1);
   const double doubt = g.doubt();
+  // A guard that lies within round-off all the way (two halves that are exactly alike) never moves away: no event.
+  if (std::abs(g.v0) <= tolerance0 && std::abs(g.v1) <= tolerance1 && std::abs(g.d0) <= h * slope_roundoff * flow_->slope_scale(watch, x0) &&
+      std::abs(g.d1) <= h * slope_roundoff * flow_->slope_scale(watch, x1)) {
+    return {};
+  }
   const bool rests = std::abs(g.v0) <= tolerance0;
   if (end == End::own_event) {
     // The watch whose event ends this step: it must only not have crossed on the way.

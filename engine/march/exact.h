@@ -59,7 +59,7 @@ class ExactMarch : public March, private Interpolant {
   void at(double tau, double* x) const override;  // Interpolant of the span being shown
   void enter(const Topology& topology);
   Finding check(double h, const double* v0, const double* v1, const double* x0, const double* x1, int exempt, bool finest);
-  Finding examine(const GuardStep& g, int watch, const double* x0, const double* x1, End end, bool finest) const;
+  Finding examine(const GuardStep& g, double h, int watch, const double* x0, const double* x1, End end, bool finest) const;
   bool attempt(double h, int rung);
   Finding locate(double h, Finding found);
   void accept(double h);
