@@ -55,7 +55,7 @@ Id dataset_settings() {
 Id text_type(std::size_t length) {
   Id type(H5Tcopy(H5T_C_S1), H5Tclose);
   H5Tset_size(type, std::max<std::size_t>(length, 1));
-  H5Tset_strpad(type, H5T_STR_NULLPAD);
+  if (length != H5T_VARIABLE) H5Tset_strpad(type, H5T_STR_NULLPAD);
   H5Tset_cset(type, H5T_CSET_UTF8);
   return type;
 }
@@ -64,8 +64,8 @@ std::string trimmed(const char* data, std::size_t length) { return {data, strnle
 
 }  // namespace
 
-Hdf5File::Hdf5File(std::string path, std::int64_t id) : path_(std::move(path)), id_(id) {}
-Hdf5File::Hdf5File(Hdf5File&& other) noexcept : path_(std::move(other.path_)), id_(std::exchange(other.id_, -1)) {}
+Hdf5File::Hdf5File(std::string path, std::int64_t id) : path_(std::move(path)), id_(id), flushed_(std::chrono::steady_clock::now()) {}
+Hdf5File::Hdf5File(Hdf5File&& other) noexcept : path_(std::move(other.path_)), id_(std::exchange(other.id_, -1)), flushed_(other.flushed_) {}
 
 Hdf5File::~Hdf5File() {
   if (id_ >= 0) H5Fclose(id_);
@@ -88,6 +88,9 @@ Hdf5File Hdf5File::create(const std::string& path, bool replace) {
   // Metadata leaves memory at a flush only (see the header).
   H5AC_cache_config_t cache;
   cache.version = H5AC__CURR_CACHE_CONFIG_VERSION;
+  // Without blocks set aside for small pieces, places in the file do not depend on when it is flushed.
+  H5Pset_meta_block_size(access, 0);
+  H5Pset_small_data_block_size(access, 0);
   H5Pget_mdc_config(access, &cache);
   cache.incr_mode = H5C_incr__off;
   cache.flash_incr_mode = H5C_flash_incr__off;
@@ -166,12 +169,11 @@ void Hdf5File::text(const std::string& name, const std::string& value, const std
 }
 
 void Hdf5File::attribute(const std::string& object, const std::string& name, const std::string& value) {
-  const Id on(H5Oopen(id_, object.c_str(), H5P_DEFAULT), H5Oclose), space(H5Screate(H5S_SCALAR), H5Sclose);
-  const Id type = text_type(value.size());
-  std::string padded = value;
-  padded.resize(std::max<std::size_t>(value.size(), 1));
+  // Of variable length: the form in which readers hand attributes out as text.
+  const Id on(H5Oopen(id_, object.c_str(), H5P_DEFAULT), H5Oclose), space(H5Screate(H5S_SCALAR), H5Sclose), type = text_type(H5T_VARIABLE);
   const Id made(H5Acreate2(on, name.c_str(), type, space, H5P_DEFAULT, H5P_DEFAULT), H5Aclose);
-  if (!made.good() || H5Awrite(made, type, padded.data()) < 0) fail("cannot take " + name + " of " + object, "check that the disk is not full");
+  const char* data = value.c_str();
+  if (!made.good() || H5Awrite(made, type, &data) < 0) fail("cannot take " + name + " of " + object, "check that the disk is not full");
 }
 
 void Hdf5File::attribute(const std::string& object, const std::string& name, double value) {
@@ -226,15 +228,6 @@ std::string Hdf5File::text(const std::string& name) const {
   return all.empty() ? std::string() : all.front();
 }
 
-std::string Hdf5File::text_attribute(const std::string& object, const std::string& name) const {
-  const Id set(has(object) ? H5Aopen_by_name(id_, object.c_str(), name.c_str(), H5P_DEFAULT, H5P_DEFAULT) : -1, H5Aclose);
-  if (!set.good()) fail("has no " + name + " of " + object, "give a record that couplet has written");
-  const Id type(H5Aget_type(set), H5Tclose);
-  std::string value(H5Tget_size(type), '\0');
-  if (H5Tget_class(type) != H5T_STRING || H5Aread(set, type, value.data()) < 0) fail("cannot read " + name + " of " + object, "the file is damaged: march again");
-  return trimmed(value.data(), value.size());
-}
-
 double Hdf5File::number_attribute(const std::string& object, const std::string& name) const {
   const Id set(has(object) ? H5Aopen_by_name(id_, object.c_str(), name.c_str(), H5P_DEFAULT, H5P_DEFAULT) : -1, H5Aclose);
   double value = 0;
@@ -254,7 +247,12 @@ std::vector<std::string> Hdf5File::members(const std::string& group) const {
   return names;
 }
 
+void Hdf5File::flush_if_due() {
+  if (std::chrono::steady_clock::now() - flushed_ >= flush_interval_) flush();
+}
+
 void Hdf5File::flush() {
+  flushed_ = std::chrono::steady_clock::now();
   if (H5Fflush(id_, H5F_SCOPE_LOCAL) < 0) fail("cannot be flushed", "check that the disk is not full");
 }
 

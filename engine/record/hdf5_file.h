@@ -3,12 +3,13 @@
 //
 // How that is reached: the file keeps the plain (earliest) format, which carries no "open for writing" mark; metadata
 // reaches the disk at a flush only; a chunk is written once, whole, and never moved, so that nothing that an earlier
-// flush points to is ever overwritten. A kill inside a flush itself (milliseconds) is not guarded against.
-// No times are stored and flushes depend on the data only, so the same data give the same bytes.
+// flush points to is ever overwritten. A kill inside a flush itself (a millisecond in each second) is not guarded
+// against. No times are stored and places in the file do not depend on flushes: the same data give the same bytes.
 //
 // This is the only file that sees HDF5's C interface. Paths use '/' between groups; parents are made as needed.
 #pragma once
 
+#include <chrono>
 #include <cstdint>
 #include <stdexcept>
 #include <string>
@@ -50,11 +51,13 @@ class Hdf5File {
   std::vector<double> numbers(const std::string& name) const;  // of any numeric type
   std::vector<std::string> texts(const std::string& name) const;
   std::string text(const std::string& name) const;
-  std::string text_attribute(const std::string& object, const std::string& name) const;
   double number_attribute(const std::string& object, const std::string& name) const;
   std::vector<std::string> members(const std::string& group) const;  // in order of name
 
   void flush();
+  /// Where a second has passed since the last flush, or what set_flush_interval says.
+  void flush_if_due();
+  void set_flush_interval(std::chrono::milliseconds interval) { flush_interval_ = interval; }
   void close();
 
  private:
@@ -69,6 +72,8 @@ class Hdf5File {
 
   std::string path_;
   std::int64_t id_ = -1;
+  std::chrono::steady_clock::time_point flushed_;
+  std::chrono::milliseconds flush_interval_{1000};
 };
 
 /// A one-dimensional compressed dataset that grows. T: double, float (stored as such) or std::int32_t.

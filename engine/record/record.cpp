@@ -111,7 +111,7 @@ void RecordWriter::full(double time, const double* values) {
   Columns& c = *columns_;
   c.full_time->append(time);
   for (std::size_t i = 0; i < c.full.size(); ++i) c.full[i].append(values[i]);
-  if (c.full_time->rows() % full_chunk == 0) file_.flush();
+  if (c.full_time->rows() % full_chunk == 0) file_.flush_if_due();
 }
 
 void RecordWriter::period(double start, double duration, const double* minimum, const double* maximum, const double* mean) {
@@ -123,7 +123,7 @@ void RecordWriter::period(double start, double duration, const double* minimum, 
     c.maximum[i].append(static_cast<float>(maximum[i]));
     c.mean[i].append(static_cast<float>(mean[i]));
   }
-  if (c.period_start->rows() % period_chunk == 0) file_.flush();
+  if (c.period_start->rows() % period_chunk == 0) file_.flush_if_due();
 }
 
 void RecordWriter::event(double time, Event::Kind kind, int name, int state) {

@@ -55,6 +55,7 @@ class RecordWriter {
   /// Writes what is held and closes the file. A writer destroyed without it leaves the file as at the last flush.
   void close();
   const std::string& path() const { return file_.path(); }
+  Hdf5File& file() { return file_; }
   std::uint64_t full_rows() const;
   std::uint64_t period_rows() const;
 

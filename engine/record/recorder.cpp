@@ -12,6 +12,7 @@ namespace {
 constexpr double infinity = std::numeric_limits<double>::infinity();
 constexpr double most_curvature = 0.05, most_third = 0.01, most_weight = 0.002;  // see recorder.h
 constexpr int deepest = 40;               // halvings of a span: beyond a picosecond in a second
+constexpr double same_instant = 1e-14;     // of the time
 constexpr double silence = 8;             // periods after which a silent probe is helped out
 constexpr double most_change = 16;        // of the period's length against the expected one, for point spacing
 constexpr double roundoff_range = 1e-9;   // of the largest signal of the same unit: ranges below are noise
@@ -105,7 +106,7 @@ const Buffer& Recorder::rows(const Topology& topology) {
 void Recorder::span(const Span& span) {
   before_span(span.topology);
   const Buffer& mine = rows(*span.topology);
-  if (last_topology_ == span.topology->id && last_time_ == span.start) {
+  if (last_topology_ == span.topology->id && continues(span)) {
     first_.swap(last_);
   } else {
     product(mine.data(), 2 * stride_, n_, span.x0, first_.data());
@@ -258,11 +259,14 @@ void Recorder::event(const Event& event) {
   const Sheet& sheet = circuit_->sheet();
   if (event.kind == Event::Kind::probe) {
     name = static_cast<int>(sheet.parts.size()) + event.condition;
-    if (event.condition == settings_.probe && event.bit) probe_rose_ = true;
+    if (event.condition == settings_.probe && event.bit) probe_rose_ = true, probe_time_ = event.time;
   } else if (event.branch >= 0) {
     name = sheet.branches[event.branch].part;
   }
-  if (!now_.pieces.empty()) now_.pieces.back().event_after = true;
+  if (!now_.pieces.empty()) {
+    now_.pieces.back().event_after = true;
+    now_.pieces.back().end = last_time_ = event.time;
+  }
   now_.happenings.push_back({event.time, event.kind, name, event.branch, -1});
 }
 
@@ -272,7 +276,7 @@ void Recorder::before_span(const Topology* topology) {
     auto& happening = now_.happenings[settled_];
     if (topology && happening.branch >= 0) happening.state = state_names_[happening.branch][topology->cells[happening.branch]];
   }
-  if (probe_rose_) close_period(last_time_, Closing::probe);
+  if (probe_rose_) close_period(probe_time_, Closing::probe);
   probe_rose_ = false;
 }
 
@@ -287,9 +291,12 @@ void Recorder::follow(const Circuit& circuit) {
 
 void Recorder::finish() {
   before_span(nullptr);
-  close_period(last_time_, Closing::clock);
   write_held(detailed() ? std::numeric_limits<int>::max() : settings_.last);
+  close_period(last_time_, Closing::clock);
 }
+
+/// Marches keep time to more than its last digit: a span's start and duration need not add up to the next one's start.
+bool Recorder::continues(const Span& span) const { return std::abs(span.start - last_time_) <= same_instant * std::abs(span.start); }
 
 void Recorder::hold(const Span& span) {
   if (!marks_.empty() && span.start >= marks_.front()) {
@@ -307,14 +314,15 @@ void Recorder::hold(const Span& span) {
     now_.clear();
     settled_ = 0;
   }
-  const bool continues = !now_.pieces.empty() && last_time_ == span.start;
+  const bool joins = !now_.pieces.empty() && continues(span);
+  if (joins) now_.pieces.back().end = span.start;
   auto& states = now_.states;
   const std::size_t stride = state_stride_;
-  if (!continues) {
+  if (!joins) {
     states.insert(states.end(), span.x0, span.x0 + n_);
     states.resize(states.size() + stride - n_, 0.0);
   }
-  now_.pieces.push_back({span.topology->id, span.start, span.duration, states.size() / stride - 1, false});
+  now_.pieces.push_back({span.topology->id, span.start, span.duration, span.start + span.duration, states.size() / stride - 1, false});
   states.insert(states.end(), span.x1, span.x1 + n_);
   states.resize(states.size() + stride - n_, 0.0);
 }
@@ -337,8 +345,8 @@ void Recorder::write(const Held& held, std::size_t first) {
     const auto& piece = held.pieces[p];
     const Topology& topology = circuit_->topology_by_id(piece.topology);
     const double *x0 = &held.states[piece.state * state_stride_], *x1 = x0 + state_stride_;
-    const double h = piece.duration, end = piece.start + h;
-    if (piece.start != written_until_) {
+    const double h = piece.duration, end = piece.end;
+    if (std::abs(piece.start - written_until_) > same_instant * piece.start) {
       writer_.new_stretch();
       last_point_ = -infinity;
       written_topology_ = -1;

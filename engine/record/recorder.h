@@ -56,7 +56,7 @@ class Recorder : public Observer {
   struct Held {
     struct Piece {
       int topology;
-      double start, duration;
+      double start, duration, end;  // end: as the next piece or an event has it, to the last digit
       std::size_t state;  // its x0 is states[state], its x1 the next one
       bool event_after;
     };
@@ -84,6 +84,7 @@ class Recorder : public Observer {
   void close_period(double time, Closing closing);
   void renew_floor();
   void before_span(const Topology* topology);
+  bool continues(const Span& span) const;
   void hold(const Span& span);
   void write_held(int periods);
   void write(const Held& held, std::size_t first);
@@ -114,6 +115,7 @@ class Recorder : public Observer {
   long spans_ = 0, clock_ticks_ = 0;
   Closing last_closing_ = Closing::clock;
   bool probe_rose_ = false;
+  double probe_time_ = 0;
 
   Held before_, now_;
   std::size_t settled_ = 0;  // happenings of now_ whose state is known
