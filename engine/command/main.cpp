@@ -7,6 +7,7 @@
 
 #include "engine/circuit/circuit.h"
 #include "engine/command/commands.h"
+#include "engine/record/hdf5_file.h"
 
 namespace {
 
@@ -38,6 +39,7 @@ int main(int argc, char** argv) {
   add_common(start_app, start.common);
   start_app->add_option("--duration", start.duration, "how long to march, like \"5 ms\"");
   start_app->add_option("--tolerance", start.tolerance, "relative tolerance of the ida march")->check(CLI::Range(1e-13, 1e-2));
+  start_app->add_option("--record", start.record, "default keeps detail at the start, around changes and at the end; all keeps everything")->check(CLI::IsMember({"default", "all"}));
   start_app->footer("Example: couplet start netlists/dock.toml --set rise=\"20 ms\" --json -");
 
   couplet::SettleCommand settle;
@@ -61,6 +63,9 @@ int main(int argc, char** argv) {
     if (*settle_app) return couplet::settle_command(settle);
     if (*parts_app) return couplet::parts_command(kind);
   } catch (const couplet::InputError& error) {
+    fmt::print(stderr, "{}\n", error.what());
+    return couplet::status_input;
+  } catch (const couplet::RecordError& error) {
     fmt::print(stderr, "{}\n", error.what());
     return couplet::status_input;
   } catch (const couplet::CircuitError& error) {

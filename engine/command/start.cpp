@@ -3,7 +3,9 @@
 
 #include "engine/command/commands.h"
 #include "engine/quantity/quantity.h"
+#include "engine/record/recorder.h"
 #include "engine/study/start.h"
+#include "engine/study/steady_state.h"
 
 namespace couplet {
 namespace {
@@ -43,6 +45,26 @@ void print_summary(const Design& design, const StartResult& r, const CommonOptio
   }
 }
 
+/// Hands everything to a recorder that is made only once the circuit stands.
+class Fork : public Observer {
+ public:
+  void span(const Span& span) override {
+    if (to) to->span(span);
+  }
+  void event(const Event& event) override {
+    if (to) to->event(event);
+  }
+  Observer* to = nullptr;
+};
+
+std::vector<std::string> words_of(const StartCommand& options) {
+  std::vector<std::string> words = {"start", options.common.netlist, "--march", options.common.march};
+  for (const auto& s : options.common.set) words.insert(words.end(), {"--set", s});
+  if (!options.duration.empty()) words.insert(words.end(), {"--duration", options.duration});
+  words.insert(words.end(), {"--record", options.record});
+  return words;
+}
+
 }  // namespace
 
 int start_command(const StartCommand& options) {
@@ -55,15 +77,49 @@ int start_command(const StartCommand& options) {
     if (!d.problem.empty() || d.value <= 0) throw InputError("--duration: " + (d.problem.empty() ? "must be positive" : d.problem));
     start.duration = d.value;
   }
+  // The record wants to know what a period is before the march begins.
+  start.section = section_of(design);
+  std::unique_ptr<RecordWriter> writer;
+  std::unique_ptr<Recorder> recorder;
+  Fork fork;
+  if (!options.common.out.empty()) {
+    writer = std::make_unique<RecordWriter>(options.common.out, design, words_of(options), COUPLET_VERSION, options.common.force);
+    RecorderSettings settings;
+    settings.all = options.record == "all";
+    settings.points = design.run.points_per_period.value_or(64);
+    settings.signals = design.run.record;
+    settings.probe = start.section.driven || !start.section.problem.empty() ? -1 : 0;
+    start.on_circuit = [&, settings](const Circuit& circuit, double time) mutable {
+      if (recorder) {
+        recorder->follow(circuit);
+        return;
+      }
+      settings.period = start.section.driven ? start.section.period : natural_period(circuit);
+      recorder = std::make_unique<Recorder>(circuit, *writer, settings);
+      for (const auto& entry : design.schedule) {
+        if (entry.time.value > time) recorder->mark(entry.time.value);
+      }
+      fork.to = recorder.get();
+    };
+    start.observers.push_back(&fork);
+  }
   StartResult result;
   {
     Progress progress(options.common.quiet);
     start.progress = [&](double share) { progress(share); };
     result = run_start(design, start);
   }
+  if (recorder) {
+    recorder->finish();
+    writer->figures(result.figures);
+    writer->verdicts(result.verdicts);
+    writer->report(result.report);
+    writer->close();
+  }
   const int status = !result.report.usable() ? status_unfinished : all_met(result.verdicts) ? status_met : status_not_met;
   if (!options.common.quiet && options.common.json != "-") print_summary(design, result, options.common);
   if (!options.common.json.empty()) write_text(options.common.json, json_of(design, "start", status, result.figures, result.verdicts, report_json(result)));
+  if (writer && !options.common.quiet && options.common.json != "-") fmt::print("\nRecord: {}\n", options.common.out);
   if (!result.report.usable()) fmt::print(stderr, "{}: {}\n", design.file, result.report.sentence);
   return status;
 }
