@@ -84,6 +84,8 @@ class Circuit {
   /// xi of this circuit from the outputs w of another of the same structure and other values (a scheduled change):
   /// charges and flux linkages carry over.
   Eigen::VectorXd carry_over(const Circuit& before, const Eigen::VectorXd& w) const;
+  /// xi here -> xi of `reference`, a circuit of the same structure with other values: equal voltages and currents.
+  Eigen::MatrixXd into(const Circuit& reference) const { return (reference.energy_ * inverse_energy_).cast<double>(); }
   /// Inputs and their slopes at time t, just after any jump at t.
   Eigen::VectorXd inputs_at(double t) const;
   /// The next time after t at which an input has a corner, or infinity.

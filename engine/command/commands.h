@@ -20,6 +20,12 @@ struct SettleCommand {
 };
 int settle_command(const SettleCommand& options);
 
+struct FollowCommand {
+  CommonOptions common;
+  std::string along, from, to;
+};
+int follow_command(const FollowCommand& options);
+
 int parts_command(const std::string& kind);
 
 }  // namespace couplet

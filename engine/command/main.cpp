@@ -47,6 +47,14 @@ int main(int argc, char** argv) {
   add_common(settle_app, settle.common);
   settle_app->footer("Example: couplet settle netlists/dock.toml --set factor=0.2 --verbose");
 
+  couplet::FollowCommand follow;
+  auto* follow_app = app.add_subcommand("follow", "follow the settled state along one value, through folds");
+  add_common(follow_app, follow.common);
+  follow_app->add_option("--along", follow.along, "a given value or PART.KEY")->required();
+  follow_app->add_option("--from", follow.from, "first value, with its unit")->required();
+  follow_app->add_option("--to", follow.to, "last value, with its unit")->required();
+  follow_app->footer("Example: couplet follow netlists/dock.toml --along load --from \"60 ohm\" --to \"6 ohm\"");
+
   std::string kind;
   auto* parts_app = app.add_subcommand("parts", "which kinds of parts there are, with keys, units and defaults");
   parts_app->add_option("KIND", kind, "show one kind in full");
@@ -61,6 +69,7 @@ int main(int argc, char** argv) {
   try {
     if (*start_app) return couplet::start_command(start);
     if (*settle_app) return couplet::settle_command(settle);
+    if (*follow_app) return couplet::follow_command(follow);
     if (*parts_app) return couplet::parts_command(kind);
   } catch (const couplet::InputError& error) {
     fmt::print(stderr, "{}\n", error.what());

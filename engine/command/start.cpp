@@ -102,19 +102,19 @@ int start_command(const StartCommand& options) {
       fork.to = recorder.get();
     };
     start.observers.push_back(&fork);
+    start.on_end = [&](const StartResult& r) {
+      if (recorder) recorder->finish();
+      writer->figures(r.figures);
+      writer->verdicts(r.verdicts);
+      writer->report(r.report);
+      writer->close();
+    };
   }
   StartResult result;
   {
     Progress progress(options.common.quiet);
     start.progress = [&](double share) { progress(share); };
     result = run_start(design, start);
-  }
-  if (recorder) {
-    recorder->finish();
-    writer->figures(result.figures);
-    writer->verdicts(result.verdicts);
-    writer->report(result.report);
-    writer->close();
   }
   const int status = !result.report.usable() ? status_unfinished : all_met(result.verdicts) ? status_met : status_not_met;
   if (!options.common.quiet && options.common.json != "-") print_summary(design, result, options.common);

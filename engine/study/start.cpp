@@ -159,6 +159,9 @@ void StartRun::begin_stage(double time, bool first) {
     result_.ledger.scheduled += stored_energy(*next, after_w) - before;
   }
   if (extremes_) merge(highest_, extremes_->ranges());
+  // Observers may still look at the circuit before, until on_circuit has told them of the new one.
+  const std::unique_ptr<March> march_before = std::move(march_);
+  const std::unique_ptr<Circuit> circuit_before = std::move(circuit_);
   circuit_ = std::move(next);
   march_ = std::move(march);
   exact_ = dynamic_cast<ExactMarch*>(march_.get());
@@ -360,6 +363,7 @@ StartResult StartRun::run() {
   }
   if (!good) fold_moments();
   summarise();
+  if (options_.on_end) options_.on_end(result_);
   return std::move(result_);
 }
 

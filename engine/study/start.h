@@ -13,6 +13,8 @@
 
 namespace couplet {
 
+struct StartResult;
+
 struct StartOptions {
   bool ida = false;
   MarchSettings march;
@@ -23,6 +25,7 @@ struct StartOptions {
   Section section;                                      // already known; found here where words is empty
   std::function<void(double share)> progress;           // called now and then with the share done
   std::function<void(const Circuit&, double time)> on_circuit;  // a new circuit begins (start, scheduled change)
+  std::function<void(const StartResult&)> on_end;       // all is marched, the last circuit still stands
   std::vector<Observer*> observers;                     // further ones
 };
 
