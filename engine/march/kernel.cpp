@@ -1,13 +1,6 @@
 // SPDX-License-Identifier: MIT
 #include "engine/march/kernel.h"
 
-// GCC builds one body for each target and the loader picks; sanitizers start too late for that.
-#if defined(__x86_64__) && defined(__GNUC__) && !defined(__SANITIZE_ADDRESS__)
-#define COUPLET_WIDE __attribute__((target_clones("default", "arch=x86-64-v3", "arch=x86-64-v4")))
-#else
-#define COUPLET_WIDE
-#endif
-
 namespace couplet {
 namespace {
 typedef double Eight __attribute__((vector_size(64), aligned(64), may_alias));

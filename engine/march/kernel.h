@@ -7,6 +7,13 @@
 #include <new>
 #include <vector>
 
+// GCC builds one body for each target and the loader picks; sanitizers start too late for that.
+#if defined(__x86_64__) && defined(__GNUC__) && !defined(__SANITIZE_ADDRESS__)
+#define COUPLET_WIDE __attribute__((target_clones("default", "arch=x86-64-v3", "arch=x86-64-v4")))
+#else
+#define COUPLET_WIDE
+#endif
+
 namespace couplet {
 
 template <class T>

@@ -12,6 +12,7 @@ namespace {
 constexpr double infinity = std::numeric_limits<double>::infinity();
 constexpr double most_curvature = 0.05, most_third = 0.01, most_weight = 0.002;  // see recorder.h
 constexpr int deepest = 40;               // halvings of a span: beyond a picosecond in a second
+constexpr long settling_spans = 1000;     // ranges are renewed at each of the first ones, then once a period
 constexpr double same_instant = 1e-14;     // of the time
 constexpr double silence = 8;             // periods after which a silent probe is helped out
 constexpr double most_change = 16;        // of the period's length against the expected one, for point spacing
@@ -117,45 +118,67 @@ void Recorder::span(const Span& span) {
   measure(span, mine);
   last_topology_ = span.topology->id;
   last_time_ = span.start + span.duration;
-  if (spans_ < 1000) renew_floor();
 }
 
-/// Whether the cubic is good enough for what it may change (see recorder.h).
-bool Recorder::resolved(double h, const double* at0, const double* at1) const {
-  const double *slope0 = at0 + stride_, *slope1 = at1 + stride_;
-  const double weight = h / (most_weight * period_);
-  int coarse = 0;
-  for (int i = 0; i < count_; ++i) {
-    const double rise = at1[i] - at0[i], range = std::max(range_[i], std::abs(rise));
+namespace {
+
+// The two loops that run over every signal at every span. Signals are padded to whole vectors; padding is zero.
+// Flags are numbers, so that the compiler keeps to one vector width.
+struct Bounds {
+  const double *range, *low, *high;
+};
+
+COUPLET_WIDE
+bool cubic_serves(int stride, double h, double weight, const double* at0, const double* at1, const Bounds& bounds) {
+  const double *slope0 = at0 + stride, *slope1 = at1 + stride;
+  double coarse = 0;
+  for (int i = 0; i < stride; ++i) {
+    const double rise = at1[i] - at0[i];
+    const double room = bounds.range[i] > std::abs(rise) ? bounds.range[i] : std::abs(rise);
     const double curvature = 0.5 * h * std::abs(slope1[i] - slope0[i]);
     const double third = std::abs(0.5 * h * (slope0[i] + slope1[i]) - rise);
     const double reach = 0.25 * h * (std::abs(slope0[i]) + std::abs(slope1[i]));
-    const double top = std::max(at0[i], at1[i]) + reach, bottom = std::min(at0[i], at1[i]) - reach;
-    const int bent = static_cast<int>(curvature > most_curvature * range) | static_cast<int>(third > most_third * range);
-    const int leaves = static_cast<int>(top > high_[i]) | static_cast<int>(bottom < low_[i]);
-    coarse |= (bent & leaves) | static_cast<int>(curvature * weight > range);
+    const double top = (at0[i] > at1[i] ? at0[i] : at1[i]) + reach, bottom = (at0[i] < at1[i] ? at0[i] : at1[i]) - reach;
+    const double bent = (curvature > most_curvature * room ? 1.0 : 0.0) + (third > most_third * room ? 1.0 : 0.0);
+    const double leaves = (top > bounds.high[i] ? 1.0 : 0.0) + (bottom < bounds.low[i] ? 1.0 : 0.0);
+    const double here = bent * leaves + (curvature * weight > room ? 1.0 : 0.0);
+    coarse = coarse > here ? coarse : here;
   }
   return coarse == 0;
 }
 
-void Recorder::gather(double h, const double* at0, const double* at1) {
-  const double *slope0 = at0 + stride_, *slope1 = at1 + stride_;
+/// Takes the ends and the integral in; true where some cubic turns in between.
+COUPLET_WIDE
+bool gather_ends(int stride, double h, const double* at0, const double* at1, double* low, double* high, double* sum) {
+  const double *slope0 = at0 + stride, *slope1 = at1 + stride;
   const double half = 0.5 * h, twelfth = h * h / 12;
-  int turns = 0;
-  for (int i = 0; i < count_; ++i) {
-    const double bottom = std::min(at0[i], at1[i]), top = std::max(at0[i], at1[i]);
-    low_[i] = std::min(low_[i], bottom);
-    high_[i] = std::max(high_[i], top);
-    range_low_[i] = std::min(range_low_[i], bottom);
-    range_high_[i] = std::max(range_high_[i], top);
-    range_[i] = std::max(range_[i], range_high_[i] - range_low_[i]);
-    sum_[i] += half * (at0[i] + at1[i]) + twelfth * (slope0[i] - slope1[i]);
+  double turns = 0;
+  for (int i = 0; i < stride; ++i) {
+    const double bottom = at0[i] < at1[i] ? at0[i] : at1[i], top = at0[i] > at1[i] ? at0[i] : at1[i];
+    low[i] = low[i] < bottom ? low[i] : bottom;
+    high[i] = high[i] > top ? high[i] : top;
+    sum[i] += half * (at0[i] + at1[i]) + twelfth * (slope0[i] - slope1[i]);
     // A cubic rises or falls throughout where both slopes point along the rise and are at most three times it.
-    const double rise = at1[i] - at0[i];
-    const double a = slope0[i] * h * rise, b = slope1[i] * h * rise, most = 3 * rise * rise;
-    turns |= static_cast<int>(a < 0) | static_cast<int>(b < 0) | static_cast<int>(a > most) | static_cast<int>(b > most);
+    const double rise = at1[i] - at0[i], most = 3 * rise * rise;
+    const double a = slope0[i] * h * rise, b = slope1[i] * h * rise;
+    const double reach = 0.25 * h * (std::abs(slope0[i]) + std::abs(slope1[i]));
+    const double leaves = (top + reach > high[i] ? 1.0 : 0.0) + (bottom - reach < low[i] ? 1.0 : 0.0);
+    const double here = leaves * ((a < 0 ? 1.0 : 0.0) + (b < 0 ? 1.0 : 0.0) + (a > most ? 1.0 : 0.0) + (b > most ? 1.0 : 0.0));
+    turns = turns > here ? turns : here;
   }
-  if (turns) gather_turns(h, at0, at1);
+  return turns != 0;
+}
+
+}  // namespace
+
+/// Whether the cubic is good enough for what it may change (see recorder.h).
+bool Recorder::resolved(double h, const double* at0, const double* at1) const {
+  return cubic_serves(stride_, h, h / (most_weight * period_), at0, at1, {range_.data(), low_.data(), high_.data()});
+}
+
+void Recorder::gather(double h, const double* at0, const double* at1) {
+  if (gather_ends(stride_, h, at0, at1, low_.data(), high_.data(), sum_.data())) gather_turns(h, at0, at1);
+  if (spans_ < settling_spans) renew_ranges();
 }
 
 /// The cubic's own extremes, where they leave the range so far.
@@ -174,8 +197,6 @@ void Recorder::gather_turns(double h, const double* at0, const double* at1) {
       const double value = at0[i] + u * (s0 + u * (q + u * c));
       low_[i] = std::min(low_[i], value);
       high_[i] = std::max(high_[i], value);
-      range_low_[i] = std::min(range_low_[i], value);
-      range_high_[i] = std::max(range_high_[i], value);
     }
   }
 }
@@ -218,6 +239,7 @@ void Recorder::close_period(double time, Closing closing) {
   ++clock_ticks_;
   const double duration = time - period_start_;
   if (!(duration > 0)) return;
+  renew_ranges();
   for (int i = 0; i < count_; ++i) sum_[i] /= duration;
   writer_.period(period_start_, duration, low_.data(), high_.data(), sum_.data());
   std::fill(low_.begin(), low_.end(), infinity);
@@ -228,7 +250,6 @@ void Recorder::close_period(double time, Closing closing) {
   }
   last_closing_ = closing;
   period_start_ = time;
-  renew_floor();
 
   now_.periods.push_back(now_.pieces.size());
   if (detailed()) {
@@ -244,14 +265,15 @@ void Recorder::close_period(double time, Closing closing) {
   detail_left_ = std::max(detail_left_, 0);
 }
 
-/// Ranges below this are round-off of larger signals of the same unit, not worth halving spans for.
-void Recorder::renew_floor() {
+/// Ranges of the march so far. Those below the round-off of larger signals of the same unit are not worth halvings.
+void Recorder::renew_ranges() {
   double largest[2] = {0, 0};
   for (int i = 0; i < count_; ++i) {
-    const double size = std::max(std::abs(range_low_[i]), std::abs(range_high_[i]));
-    if (size < infinity) largest[is_volts_[i]] = std::max(largest[is_volts_[i]], size);
+    range_low_[i] = std::min(range_low_[i], low_[i]);
+    range_high_[i] = std::max(range_high_[i], high_[i]);
+    largest[is_volts_[i]] = std::max({largest[is_volts_[i]], std::abs(range_low_[i]), std::abs(range_high_[i])});
   }
-  for (int i = 0; i < count_; ++i) range_[i] = std::max(range_[i], roundoff_range * largest[is_volts_[i]]);
+  for (int i = 0; i < count_; ++i) range_[i] = std::max(range_high_[i] - range_low_[i], roundoff_range * largest[is_volts_[i]]);
 }
 
 void Recorder::event(const Event& event) {

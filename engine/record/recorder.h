@@ -82,7 +82,7 @@ class Recorder : public Observer {
   void gather_turns(double h, const double* at0, const double* at1);
   double due() const;
   void close_period(double time, Closing closing);
-  void renew_floor();
+  void renew_ranges();
   void before_span(const Topology* topology);
   bool continues(const Span& span) const;
   void hold(const Span& span);
