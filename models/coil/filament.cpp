@@ -193,6 +193,10 @@ Point flux_density(const Filament& filament, const Point& at) {
 }
 
 double distance(const Filament& f, const Point& at) {
+  if (f.circle()) {
+    const double beside = std::sqrt(at.x() * at.x() + at.y() * at.y()) - f.corner, above = at.z() - f.height;
+    return std::sqrt(beside * beside + above * above);
+  }
   const double x = std::abs(at.x()) - (f.half_length - f.corner),
                y = std::abs(at.y()) - (f.half_width - f.corner);
   const double outside =

@@ -3,7 +3,7 @@
 // space. Everything in this room is SI: metres, amperes, henries, teslas, radians.
 #pragma once
 
-#include <Eigen/Core>
+#include <Eigen/Dense>
 #include <vector>
 
 namespace couplet::coil {

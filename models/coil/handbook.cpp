@@ -63,7 +63,9 @@ double loop(double radius, double wire_radius) {
 }
 
 double square(double side, double wire_radius) {
-  return 2 * mu0 * side / pi * (std::log(side / wire_radius) - 0.52401);
+  static const double constant =
+      std::asinh(1.0) + 1.75 - std::sqrt(2.0) - std::log(2.0);  // printed as 0.52401
+  return 2 * mu0 * side / pi * (std::log(side / wire_radius) - constant);
 }
 
 double coaxial_squares(double s, double d) {

@@ -28,7 +28,8 @@ double solenoid_sheet(double turns, double diameter, double length);
 
 /// Circular loop of round wire, H, current evenly spread (7/4) (F. W. Grover 1946, ch. 16).
 double loop(double radius, double wire_radius);
-/// Square of round wire, H: (2 mu0 s/pi)(ln(s/a) - 0.52401) (Grover 1946, ch. 8).
+/// Square of round wire, H: (2 mu0 s/pi)(ln(s/a) - 0.52401), terms linear in a/s left out (Grover 1946, ch.
+/// 8).
 double square(double side, double wire_radius);
 /// Two equal coaxial squares, H, exact (Grover 1946, ch. 8).
 double coaxial_squares(double side, double distance);

@@ -27,7 +27,7 @@ Integral along_circle(const Filaments& sources, const Filament& path, const Pose
   const bool mirrored = pose.shift.y() == 0 && pose.turn(0, 1) == 0 && pose.turn(1, 0) == 0 &&
                         pose.turn(1, 2) == 0 && pose.turn(2, 1) == 0;
   const double span = mirrored ? pi : 2 * pi;
-  double size = 0;
+  double size = 0, nearest = 1e300;
   // Mean of A . dl/dphi over points at (i + offset) span/count, i = 0..count-1.
   const auto average = [&](int count, double offset) {
     double sum = 0, absolute = 0;
@@ -37,33 +37,28 @@ Integral along_circle(const Filaments& sources, const Filament& path, const Pose
       const Point along = pose.turn.col(0) * (-path.corner * s) + pose.turn.col(1) * (path.corner * c);
       const double value = potential(sources, at).dot(along);
       sum += value, absolute += std::abs(value);
+      for (const Filament& f : sources) nearest = std::min(nearest, distance(f, at));
     }
     size = std::max(size, absolute / count);
     return sum / count;
   };
-  if (mirrored) {
-    // Points at half steps of 0..pi stand for the whole circle; tripling nests them (1/6, 3/6, 5/6 of a
-    // step).
-    int count = 6;
-    double value = average(count, 0.5), change = 0;
-    while (count < 5000) {
-      const double finer = (value + average(count, 1.0 / 6) + average(count, 5.0 / 6)) / 3;
-      change = std::abs(finer - value), value = finer, count *= 3;
-      // The error is about change^3/size^2 by now; the cube root is taken with a thousandfold reserve.
-      if (change <= size * std::cbrt(tolerance) * 0.1) break;
-    }
-    const double error = change * std::pow(change / size, 2) * 1e3 + 1e-15 * size;
-    return {2 * pi * value, 2 * pi * std::min(error, change)};
-  }
-  int count = 12;
-  double value = average(count, 0), change = 0;
+  // Refinement multiplies the points by `factor` (nested), which raises the relative change to that power.
+  // One small change may be an accident, so the one before must fit the same law; then the error is far below
+  // the change.
+  const int factor = mirrored ? 3 : 2;
+  int count = mirrored ? 6 : 12;
+  double value = average(count, mirrored ? 0.5 : 0), before = size, change = size;
   while (count < 20000) {
-    const double finer = (value + average(count, 0.5)) / 2;
-    change = std::abs(finer - value), value = finer, count *= 2;
-    if (change <= size * std::sqrt(tolerance) * 0.1) break;
+    const double finer = mirrored ? (value + average(count, 1.0 / 6) + average(count, 5.0 / 6)) / 3
+                                  : (value + average(count, 0.5)) / 2;
+    before = change, change = std::abs(finer - value), value = finer, count *= factor;
+    const double goal = std::pow(0.01 * tolerance, 1.0 / factor);
+    const double full_circle = mirrored ? 2 * count : count;
+    const bool sees_all = full_circle * std::asinh(nearest / path.corner) >= 0.5 * std::log(1 / tolerance);
+    if (sees_all && change <= size * goal && before <= size * std::pow(goal, 1.0 / factor)) break;
   }
-  const double error = change * (change / size) * 1e2 + 1e-15 * size;
-  return {2 * pi * value, 2 * pi * std::min(error, change)};
+  const double law = size * std::pow(std::max(change / size, std::pow(before / size, factor)), factor);
+  return {2 * pi * value, 2 * pi * (std::min(100 * law, change) + 1e-15 * size)};
 }
 
 Integral along_pieces(const Filaments& sources, const Filament& path, const Pose& pose, bool quarter,
