@@ -46,7 +46,7 @@ Integral along_circle(const Filaments& sources, const Filament& path, const Pose
   // One small change may be an accident, so the one before must fit the same law; then the error is far below
   // the change.
   const int factor = mirrored ? 3 : 2;
-  int count = mirrored ? 6 : 12;
+  int count = mirrored ? 2 : 6;
   double value = average(count, mirrored ? 0.5 : 0), before = size, change = size;
   while (count < 20000) {
     const double finer = mirrored ? (value + average(count, 1.0 / 6) + average(count, 5.0 / 6)) / 3
@@ -54,7 +54,7 @@ Integral along_circle(const Filaments& sources, const Filament& path, const Pose
     before = change, change = std::abs(finer - value), value = finer, count *= factor;
     const double goal = std::pow(0.01 * tolerance, 1.0 / factor);
     const double full_circle = mirrored ? 2 * count : count;
-    const bool sees_all = full_circle * std::asinh(nearest / path.corner) >= 0.5 * std::log(1 / tolerance);
+    const bool sees_all = full_circle * std::asinh(nearest / path.corner) >= 0.75 * std::log(1 / tolerance);
     if (sees_all && change <= size * goal && before <= size * std::pow(goal, 1.0 / factor)) break;
   }
   const double law = size * std::pow(std::max(change / size, std::pow(before / size, factor)), factor);
