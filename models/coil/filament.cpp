@@ -62,24 +62,53 @@ const Rule& rule() {
   return made;
 }
 
+/// The eight points of each of the 1, 2, 4, ... equal stretches of a quarter circle, as cosine and sine:
+/// computed once, since every corner of every filament is a quarter circle.
+struct QuarterCircle {
+  static constexpr int levels = 12;
+  struct Node {
+    double cosine, sine;
+  };
+  std::vector<std::array<Node, 9>> stretches;  // the ninth is the middle; stretch i of level n at 2^n - 1 + i
+  QuarterCircle() {
+    for (int level = 0; level < levels; ++level) {
+      const int count = 1 << level;
+      for (int i = 0; i < count; ++i) {
+        std::array<Node, 9> nodes;
+        for (int n = 0; n < 9; ++n) {
+          const double angle = pi / 2 * (i + (n < 8 ? rule().place[n] : 0.5)) / count;
+          nodes[n] = {std::cos(angle), std::sin(angle)};
+        }
+        stretches.push_back(nodes);
+      }
+    }
+  }
+};
+
 /// Integral of `kernel(position, direction)` along a corner. A stretch is halved until the point is further
 /// from its middle than 1.5 times its length; eight points then leave 1e-10 of it.
 template <class Kernel>
-Point along_corner(const Piece& piece, const Point& at, double from, double to, int depth,
-                   const Kernel& kernel) {
-  Point position, direction;
-  piece.at(0.5 * (from + to), position, direction);
-  if (depth < 24 && (at - position).norm() < 1.5 * piece.length() * (to - from)) {
-    const double middle = 0.5 * (from + to);
-    return along_corner(piece, at, from, middle, depth + 1, kernel) +
-           along_corner(piece, at, middle, to, depth + 1, kernel);
+void along_corner(const Piece& piece, const Point& at, int level, int stretch, const Kernel& kernel,
+                  Point& sum) {
+  static const QuarterCircle quarter;
+  const auto& nodes = quarter.stretches[(1 << level) - 1 + stretch];
+  const double turn_cosine = std::array{1, 0, -1, 0}[piece.quadrant],
+               turn_sine = std::array{0, 1, 0, -1}[piece.quadrant];
+  const auto radial = [&](const QuarterCircle::Node& n) {
+    return Point(turn_cosine * n.cosine - turn_sine * n.sine, turn_sine * n.cosine + turn_cosine * n.sine, 0);
+  };
+  const double length = piece.length() / (1 << level);
+  const Point middle = piece.centre + piece.radius * radial(nodes[8]);
+  if (level + 1 < QuarterCircle::levels && (at - middle).squaredNorm() < 2.25 * length * length) {
+    along_corner(piece, at, level + 1, 2 * stretch, kernel, sum);
+    along_corner(piece, at, level + 1, 2 * stretch + 1, kernel, sum);
+    return;
   }
-  Point sum = Point::Zero();
   for (int i = 0; i < 8; ++i) {
-    piece.at(from + (to - from) * rule().place[i], position, direction);
-    sum += rule().weight[i] * (to - from) * kernel(position, direction);
+    const Point out = radial(nodes[i]);
+    sum += rule().weight[i] * length *
+           kernel(Point(piece.centre + piece.radius * out), Point(-out.y(), out.x(), 0));
   }
-  return sum;
 }
 
 /// Closed form of the potential of a straight wire: (mu0/4 pi) 2 artanh(l/(r1 + r2)) along the wire.
@@ -131,65 +160,68 @@ void Piece::at(double s, Point& position, Point& direction) const {
     position = from + s * direction;
     return;
   }
-  const double c = std::cos(start + s * sweep), n = std::sin(start + s * sweep);
+  const double angle = (quadrant + s) * pi / 2, c = std::cos(angle), n = std::sin(angle);
   position = centre + radius * Point(c, n, 0);
-  direction = radius * sweep * Point(-n, c, 0);
+  direction = radius * pi / 2 * Point(-n, c, 0);
 }
 
-std::vector<Piece> pieces(const Filament& f, bool quarter) {
+std::vector<Piece> pieces(const Filament& f, Part part) {
   const double x = f.half_length, y = f.half_width, c = f.corner, z = f.height;
   std::vector<Piece> list;
   const auto side = [&](double x1, double y1, double x2, double y2) {
-    if (x1 != x2 || y1 != y2) list.push_back({true, {x1, y1, z}, {x2, y2, z}, Point::Zero(), 0, 0, 0});
+    if (x1 != x2 || y1 != y2) list.push_back({true, {x1, y1, z}, {x2, y2, z}, Point::Zero(), 0, 0});
   };
-  const auto bend = [&](double cx, double cy, double start) {
-    if (c > 0) list.push_back({false, Point::Zero(), Point::Zero(), {cx, cy, z}, c, start, pi / 2});
+  const auto bend = [&](double cx, double cy, int quadrant) {
+    if (c > 0) list.push_back({false, Point::Zero(), Point::Zero(), {cx, cy, z}, c, quadrant});
   };
-  side(x, quarter ? 0 : c - y, x, y - c);
+  const bool whole = part == Part::whole;
+  side(x, whole ? c - y : 0, x, y - c);
   bend(x - c, y - c, 0);
-  side(x - c, y, quarter ? 0 : c - x, y);
-  if (quarter) return list;
-  bend(c - x, y - c, pi / 2);
-  side(-x, y - c, -x, c - y);
-  bend(c - x, c - y, pi);
+  side(x - c, y, part == Part::quarter ? 0 : c - x, y);
+  if (part == Part::quarter) return list;
+  bend(c - x, y - c, 1);
+  side(-x, y - c, -x, whole ? c - y : 0);
+  if (part == Part::half) return list;
+  bend(c - x, c - y, 2);
   side(c - x, -y, x - c, -y);
-  bend(x - c, c - y, 1.5 * pi);
+  bend(x - c, c - y, 3);
   return list;
 }
 
 Point vector_potential(const Filament& filament, const Point& at) {
-  if (filament.circle()) {
-    const Mean m = mean(filament.corner, at.x() * at.x() + at.y() * at.y(), at.z() - filament.height);
-    const double over_rho = mu0 / 4 * m.sum / m.limit;
-    return {-over_rho * at.y(), over_rho * at.x(), 0};
-  }
-  Point sum = Point::Zero();
-  for (const Piece& piece : pieces(filament)) {
+  if (!filament.circle()) return vector_potential(pieces(filament), at);
+  const Mean m = mean(filament.corner, at.x() * at.x() + at.y() * at.y(), at.z() - filament.height);
+  const double over_rho = mu0 / 4 * m.sum / m.limit;
+  return {-over_rho * at.y(), over_rho * at.x(), 0};
+}
+
+Point vector_potential(const std::vector<Piece>& outline, const Point& at) {
+  Point sides = Point::Zero(), corners = Point::Zero();
+  const auto kernel = [&](const Point& p, const Point& d) -> Point { return d / (at - p).norm(); };
+  for (const Piece& piece : outline) {
     if (piece.straight)
-      sum += side_potential(piece, at);
+      sides += side_potential(piece, at);
     else
-      sum += (mu0 / (4 * pi)) *
-             along_corner(piece, at, 0, 1, 0,
-                          [&](const Point& p, const Point& d) -> Point { return d / (at - p).norm(); });
+      along_corner(piece, at, 0, 0, kernel, corners);
   }
-  return sum;
+  return sides + mu0 / (4 * pi) * corners;
 }
 
 Point flux_density(const Filament& filament, const Point& at) {
   if (filament.circle()) return circle_flux_density(filament, at);
-  Point sum = Point::Zero();
+  Point sides = Point::Zero(), corners = Point::Zero();
+  const auto kernel = [&](const Point& p, const Point& d) -> Point {
+    const Point r = at - p;
+    const double n = r.norm();
+    return d.cross(r) / (n * n * n);
+  };
   for (const Piece& piece : pieces(filament)) {
     if (piece.straight)
-      sum += side_flux_density(piece, at);
+      sides += side_flux_density(piece, at);
     else
-      sum +=
-          (mu0 / (4 * pi)) * along_corner(piece, at, 0, 1, 0, [&](const Point& p, const Point& d) -> Point {
-            const Point r = at - p;
-            const double n = r.norm();
-            return d.cross(r) / (n * n * n);
-          });
+      along_corner(piece, at, 0, 0, kernel, corners);
   }
-  return sum;
+  return sides + mu0 / (4 * pi) * corners;
 }
 
 double distance(const Filament& f, const Point& at) {

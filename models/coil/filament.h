@@ -57,17 +57,24 @@ Point flux_density(const Filament& filament, const Point& at);
 /// A straight side or a corner of a filament, counter-clockwise.
 struct Piece {
   bool straight = true;
-  Point from, to;                           // of a straight side
-  Point centre;                             // of a corner
-  double radius = 0, start = 0, sweep = 0;  // of a corner: from angle `start` through `sweep`, rad
+  Point from, to;     // of a straight side
+  Point centre;       // of a corner, always a quarter circle
+  double radius = 0;  // of a corner
+  int quadrant = 0;   // of a corner: from quadrant * 90 degrees on
 
-  double length() const { return straight ? (to - from).norm() : radius * sweep; }
+  double length() const { return straight ? (to - from).norm() : radius * pi / 2; }
   /// Position and direction at 0 <= s <= 1; the direction is d(position)/ds.
   void at(double s, Point& position, Point& direction) const;
 };
 
-/// The sides and corners of a filament in order; `quarter`: only those with x >= 0 and y >= 0.
-std::vector<Piece> pieces(const Filament& filament, bool quarter = false);
+/// All of a filament, what of it has y >= 0, or what has x >= 0 and y >= 0.
+enum class Part { whole, half, quarter };
+
+/// The sides and corners of a filament, in order.
+std::vector<Piece> pieces(const Filament& filament, Part part = Part::whole);
+
+/// The same as vector_potential(filament, at), with the pieces made once.
+Point vector_potential(const std::vector<Piece>& outline, const Point& at);
 
 /// Shortest distance from a point to the filament, m.
 double distance(const Filament& filament, const Point& at);

@@ -42,6 +42,7 @@ Link::Link(const Winding& first, const Winding& second, const Surroundings& shee
     : first_(build_both(first, second).first),
       second_(build(second)),
       sheets_(sheets),
+      alone_{self_inductance(first_), self_inductance(second_)},
       first_alone_(first_, own_images(first_, sheets.behind_first)),
       second_alone_(second_, own_images(second_, sheets.behind_second)) {}
 
@@ -49,7 +50,7 @@ LinkValues Link::at(const Placement& place, double frequency, double celsius, do
   const Pose p = pose(first_, second_, place);
   const std::string touching = collision(first_, second_, p);
   if (!touching.empty()) throw std::invalid_argument(touching);
-  const Inductances l = inductances(first_, second_, p, sheets_, tolerance);
+  const Inductances l = inductances(first_, second_, p, sheets_, tolerance, alone_);
   const Impedance one = first_alone_.at(frequency, celsius), two = second_alone_.at(frequency, celsius);
   LinkValues v;
   v.first = l.first.value + one.inductance_change, v.second = l.second.value + two.inductance_change;
@@ -64,6 +65,11 @@ LinkValues Link::at(const Placement& place, double frequency, double celsius, do
     for (const std::string& note : r->limits(frequency, celsius))
       if (std::find(v.notes.begin(), v.notes.end(), note) == v.notes.end()) v.notes.push_back(note);
   return v;
+}
+
+double best_efficiency(double coupling, double first_quality, double second_quality) {
+  const double x = coupling * coupling * first_quality * second_quality, root = 1 + std::sqrt(1 + x);
+  return x / (root * root);
 }
 
 LinkValues link_values(const LinkGeometry& g, double frequency, double celsius) {

@@ -46,8 +46,13 @@ class Link {
  private:
   Coil first_, second_;
   Surroundings sheets_;
-  Resistance first_alone_, second_alone_;  // without sheets or with the coil's own; see at()
+  Alone alone_;
+  Resistance first_alone_, second_alone_;  // each in the field of its own winding and its own sheet
 };
+
+/// Best efficiency from coil to coil, at the load that suits it: x/(1 + sqrt(1 + x))^2 with x = k^2 Q1 Q2 (K.
+/// van Schuylenbergh, R. Puers, Inductive Powering (2009); M. Zargham, P. G. Gulak 2012).
+double best_efficiency(double coupling, double first_quality, double second_quality);
 
 LinkValues link_values(const LinkGeometry& geometry, double frequency, double celsius = 20);
 

@@ -14,18 +14,36 @@ bool all_circles(const Filaments& list) {
   return std::all_of(list.begin(), list.end(), [](const Filament& f) { return f.circle(); });
 }
 
-Point potential(const Filaments& sources, const Point& at) {
-  Point sum = Point::Zero();
-  for (const Filament& f : sources) sum += f.turns * vector_potential(f, at);
-  return sum;
+/// The filaments whose potential is integrated, with the pieces of those that are no circles.
+struct Sources {
+  const Filaments& filaments;
+  std::vector<std::vector<Piece>> outlines;
+  bool circles;
+
+  explicit Sources(const Filaments& list) : filaments(list), circles(all_circles(list)) {
+    for (const Filament& f : list) outlines.push_back(f.circle() ? std::vector<Piece>{} : pieces(f));
+  }
+  Point potential(const Point& at) const {
+    Point sum = Point::Zero();
+    for (size_t i = 0; i < filaments.size(); ++i) {
+      const Filament& f = filaments[i];
+      sum += f.turns * (f.circle() ? vector_potential(f, at) : vector_potential(outlines[i], at));
+    }
+    return sum;
+  }
+};
+
+/// True where the arrangement is its own mirror image in the plane y = 0.
+bool mirrored_across(const Pose& pose) {
+  return pose.shift.y() == 0 && pose.turn(0, 1) == 0 && pose.turn(1, 0) == 0 && pose.turn(1, 2) == 0 &&
+         pose.turn(2, 1) == 0;
 }
 
 /// Along a circle the integrand is smooth and periodic, so the trapezium rule converges geometrically: the
 /// error after doubling the points is about the square of the change. Where the placement is its own mirror
 /// image in y, half of the circle is enough.
-Integral along_circle(const Filaments& sources, const Filament& path, const Pose& pose, double tolerance) {
-  const bool mirrored = pose.shift.y() == 0 && pose.turn(0, 1) == 0 && pose.turn(1, 0) == 0 &&
-                        pose.turn(1, 2) == 0 && pose.turn(2, 1) == 0;
+Integral along_circle(const Sources& sources, const Filament& path, const Pose& pose, double tolerance) {
+  const bool mirrored = mirrored_across(pose);
   const double span = mirrored ? pi : 2 * pi;
   double size = 0, nearest = 1e300;
   // Mean of A . dl/dphi over points at (i + offset) span/count, i = 0..count-1.
@@ -35,9 +53,9 @@ Integral along_circle(const Filaments& sources, const Filament& path, const Pose
       const double angle = (i + offset) * span / count, c = std::cos(angle), s = std::sin(angle);
       const Point at = pose(Point(path.corner * c, path.corner * s, path.height));
       const Point along = pose.turn.col(0) * (-path.corner * s) + pose.turn.col(1) * (path.corner * c);
-      const double value = potential(sources, at).dot(along);
+      const double value = sources.potential(at).dot(along);
       sum += value, absolute += std::abs(value);
-      for (const Filament& f : sources) nearest = std::min(nearest, distance(f, at));
+      for (const Filament& f : sources.filaments) nearest = std::min(nearest, distance(f, at));
     }
     size = std::max(size, absolute / count);
     return sum / count;
@@ -61,37 +79,32 @@ Integral along_circle(const Filaments& sources, const Filament& path, const Pose
   return {2 * pi * value, 2 * pi * (std::min(100 * law, change) + 1e-15 * size)};
 }
 
-Integral along_pieces(const Filaments& sources, const Filament& path, const Pose& pose, bool quarter,
-                      double tolerance) {
+Integral along_pieces(const Sources& sources, const Filament& path, const Pose& pose, double tolerance) {
   using Rule = boost::math::quadrature::gauss_kronrod<double, 15>;
+  const bool half = mirrored_across(pose), quarter = half && pose.coaxial();
   Integral total;
-  for (const Piece& piece : pieces(path, quarter)) {
+  for (const Piece& piece : pieces(path, quarter ? Part::quarter : half ? Part::half : Part::whole)) {
     const auto integrand = [&](double s) {
       Point position, direction;
       piece.at(s, position, direction);
-      return potential(sources, pose(position)).dot(pose.turn * direction);
+      return sources.potential(pose(position)).dot(pose.turn * direction);
     };
     double error = 0;
     total.value += Rule::integrate(integrand, 0.0, 1.0, 12, tolerance, &error);
     total.error += error;
   }
-  const double copies = quarter ? 4 : 1;
+  const double copies = quarter ? 4 : half ? 2 : 1;
   return {copies * total.value, copies * total.error};
 }
 
-/// True where both coils share the planes x = 0 and y = 0 as mirrors.
-bool shares_mirrors(const Pose& pose) {
-  return pose.coaxial() && std::abs(pose.turn(0, 1)) < 1e-13 && std::abs(pose.turn(1, 0)) < 1e-13;
-}
-
-Integral along(const Filaments& sources, const Filament& path, const Pose& pose, double tolerance) {
+Integral along(const Sources& sources, const Filament& path, const Pose& pose, double tolerance) {
   if (path.circle()) {
-    if (pose.coaxial() && all_circles(sources)) {
+    if (pose.coaxial() && sources.circles) {
       const double height = pose.shift.z() + pose.turn(2, 2) * path.height;
       // Seen from the first coil the second runs the other way round where its axis is turned over.
       const double sense = pose.turn(0, 0) * pose.turn(1, 1) - pose.turn(0, 1) * pose.turn(1, 0);
       Integral total;
-      for (const Filament& f : sources)
+      for (const Filament& f : sources.filaments)
         total.value += f.turns * coaxial_circles(f.corner, path.corner, height - f.height);
       total.error = 1e-15 * total.value;
       total.value *= sense > 0 ? 1 : -1;
@@ -99,16 +112,17 @@ Integral along(const Filaments& sources, const Filament& path, const Pose& pose,
     }
     return along_circle(sources, path, pose, tolerance);
   }
-  return along_pieces(sources, path, pose, shares_mirrors(pose), tolerance);
+  return along_pieces(sources, path, pose, tolerance);
 }
 
 Integral between(const Filaments& first, const Filaments& second, const Pose& pose, double tolerance) {
   // The potential of circles is cheap, that of rectangles is not: integrate along the rectangles where only
   // one is.
   if (!all_circles(first) && all_circles(second)) return between(second, first, pose.inverse(), tolerance);
+  const Sources sources(first);
   Integral total;
   for (const Filament& path : second) {
-    const Integral part = along(first, path, pose, tolerance);
+    const Integral part = along(sources, path, pose, tolerance);
     total.value += path.turns * part.value;
     total.error += path.turns * part.error;
   }

@@ -131,9 +131,11 @@ std::vector<Image> images(const Surroundings& around, const Coil& first, const C
 }
 
 Inductances inductances(const Coil& first, const Coil& second, const Pose& pose, const Surroundings& around,
-                        double tolerance) {
-  Inductances sum{self_inductance(first, tolerance), self_inductance(second, tolerance),
-                  mutual(first, second, pose, tolerance), 0};
+                        double tolerance, const std::optional<Alone>& alone) {
+  Inductances sum;
+  sum.first = alone ? alone->first : self_inductance(first, tolerance);
+  sum.second = alone ? alone->second : self_inductance(second, tolerance);
+  sum.mutual = mutual(first, second, pose, tolerance);
   if (around.empty()) return sum;
   const auto one = mirror_behind_first(around, first), two = mirror_behind_second(around, second, pose);
   if (one && clearance(second, pose, *one) < 0)

@@ -53,9 +53,15 @@ struct Inductances {
   int laps = 0;                    // of images that were summed
 };
 
+/// Self inductances in free space, for those who place the same two coils many times.
+struct Alone {
+  Integral first, second;
+};
+
 /// Both self inductances and the mutual one. Throws std::invalid_argument where a coil cuts through a sheet.
 Inductances inductances(const Coil& first, const Coil& second, const Pose& second_in_first,
-                        const Surroundings& surroundings, double tolerance = 1e-8);
+                        const Surroundings& surroundings, double tolerance = 1e-8,
+                        const std::optional<Alone>& alone = {});
 
 /// Self inductance of one coil with at most one sheet behind it.
 Integral self_inductance(const Coil& coil, const std::optional<Plane>& behind, double tolerance = 1e-8);

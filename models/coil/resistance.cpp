@@ -92,7 +92,7 @@ OwnField own_field(const Coil& coil, const std::vector<Image>& mirrored) {
   for (size_t i = 0; i < coil.filaments.size(); ++i) {
     const Filament& turn = coil.filaments[i];
     double in_plane = 0, along_axis = 0, length = 0;
-    for (const Piece& piece : pieces(turn, symmetric || mirrored.empty())) {
+    for (const Piece& piece : pieces(turn, symmetric || mirrored.empty() ? Part::quarter : Part::whole)) {
       // Middle points: the field is wanted to a percent, and the ends of a side say little about it.
       const int samples = symmetric ? 1 : piece.straight ? 6 : 3;
       for (int n = 0; n < samples; ++n) {

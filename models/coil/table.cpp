@@ -211,14 +211,16 @@ PairValues PositionTable::at(const Position& position) const {
 std::vector<double> PositionTable::gaps_for(double coupling, double shift, double tilt) const {
   std::vector<double> found;
   const auto off = [&](double gap) { return this->coupling({gap, shift, tilt}) - coupling; };
+  // A node that has the value to the last digits counts as having it, once.
+  const auto settled = [](double difference) { return std::abs(difference) < 1e-14 ? 0 : difference; };
   // Within a cell the curve is monotone along the gap, so a change of sign between nodes finds every
   // crossing.
   const std::vector<double>& axis = axes_[0];
   for (size_t i = 0; i < axis.size(); ++i) {
-    const double here = off(axis[i]);
+    const double here = settled(off(axis[i]));
     if (here == 0) found.push_back(axis[i]);
     if (i + 1 == axis.size()) break;
-    const double next = off(axis[i + 1]);
+    const double next = settled(off(axis[i + 1]));
     if (here * next >= 0) continue;
     boost::uintmax_t most = 200;
     const auto ends = boost::math::tools::toms748_solve(off, axis[i], axis[i + 1], here, next,

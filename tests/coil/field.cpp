@@ -82,6 +82,19 @@ TEST_CASE("link: one call from a drawing to part values", "[coil]") {
   CHECK(hot.first_resistance > hot.first_resistance_dc);
   CHECK(hot.first < v.first);
   CHECK_FALSE(hot.notes.empty());
+  // Best efficiency, computed from the closed form: k, Q1, Q2.
+  CHECK(agrees(best_efficiency(0.3, 100, 80), 0.928190435655, {1e-11, 0, "12 digits"}));
+  CHECK(agrees(best_efficiency(0.1, 150, 100), 0.849490590301, {1e-11, 0, "12 digits"}));
+  CHECK(agrees(best_efficiency(0.02, 300, 300), 0.717624303872, {1e-11, 0, "12 digits"}));
+  // Two equal tanks split to f0/sqrt(1 + k) and f0/sqrt(1 - k): the coupling matrix as an eigenvalue problem.
+  LinkGeometry equal = g;
+  equal.second = equal.first;
+  const LinkValues e = link_values(equal, 0);
+  Eigen::Matrix2d matrix;
+  matrix << e.first, e.mutual, e.mutual, e.second;
+  const Eigen::Vector2d values = Eigen::SelfAdjointEigenSolver<Eigen::Matrix2d>(matrix).eigenvalues();
+  CHECK(agrees(values[0], e.first * (1 - e.coupling), {1e-13, 0, "two equal coils"}));
+  CHECK(agrees(values[1], e.first * (1 + e.coupling), {1e-13, 0, "two equal coils"}));
   g.place = {0.5e-3, 0, 0, 0.5};
   CHECK_THROWS_WITH(link_values(g, 0), Catch::Contains("would touch"));
   g.second.turns = 200;
