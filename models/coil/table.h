@@ -3,9 +3,9 @@
 // geometry, interpolated so that the coupling matrix stays positive definite between the points.
 //
 // What is interpolated are ln L1, ln L2, artanh(M/sqrt(L1 L2)), ln R1 and ln R2: whatever values these take,
-// both inductances and resistances are positive and |k| < 1. Between the points runs a piecewise cubic
-// without overshoot (F. N. Fritsch, J. Butland, SIAM J. Sci. Stat. Comput. 5 (1984) 300): first along tilt,
-// then shift, then gap.
+// both inductances and resistances are positive and |k| < 1, by the parametrisation and not by luck of the
+// curve. Between the points runs a piecewise cubic without overshoot (F. N. Fritsch, J. Butland, SIAM J. Sci.
+// Stat. Comput. 5 (1984) 300): first along tilt, then shift, then gap.
 #pragma once
 
 #include <array>

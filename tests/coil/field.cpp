@@ -52,6 +52,14 @@ TEST_CASE("field on the axis and shares of the levels", "[coil]") {
   CHECK(agrees(field_at(scene, {{1e5, 1, 0}, {3e5, 1, 0}}, {at})[0].public_share, 2 * first / 27e-6,
                {1e-12, 0, "arithmetic"}));
   CHECK(field_at(scene, {{1e5, {0, 1}, 0}}, {at})[0].flux_density == first);
+  // Two equal coils in one place: opposite currents cancel, equal ones double; a second coil elsewhere is a
+  // first moved.
+  Scene twice{scene.first, scene.first, {}, {}};
+  CHECK(field_at(twice, {{1e5, 1, -1}}, {at})[0].flux_density < 1e-12 * first);
+  CHECK(agrees(field_at(twice, {{1e5, 1, 1}}, {at})[0].flux_density, 2 * first, {1e-12, 0, "arithmetic"}));
+  twice.second_in_first.shift = Point(0.01, -0.02, 0.03);
+  CHECK(agrees(field_at(twice, {{1e5, 0, 1}}, {Point(at + twice.second_in_first.shift)})[0].flux_density,
+               first, {1e-12, 0, "the same field elsewhere"}));
   // A point further away is never worse, and the worst one is at least as bad as the axis.
   double before = 1e9;
   for (const double d : {0.01, 0.05, 0.1, 0.3}) {

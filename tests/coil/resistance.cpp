@@ -145,6 +145,15 @@ TEST_CASE("windings: dc, growth, and the sign of every change", "[coil]") {
   const Resistance litz(build(l));
   CHECK(litz.at(100e3, 20).resistance / litz.dc(20) < 0.5 * solid.at(100e3, 20).resistance / solid.dc(20));
   CHECK(litz.at(10e6, 20).resistance / litz.dc(20) > solid.at(10e6, 20).resistance / solid.dc(20));
+  // One turn of litz sits in its bundle's own field: with H^2 = I^2/(8 pi^2 b^2) on average and pi omega^2
+  // B^2 d^4/(128 rho) a metre of strand for peak B, the growth is n^2 omega^2 mu0^2 d^6/(2048 rho^2 b^2),
+  // besides that of the lone strand.
+  l.turns = 1;
+  const Resistance bundle(build(l));
+  const double f = 30e3, growth = 100 * 2 * pi * f * mu0 * std::pow(0.1e-3, 3) / (copper * 0.6e-3);
+  const double strand = round_wire(0.05e-3, skin_depth(f, copper)).real();
+  CHECK(agrees(bundle.at(f, 20).resistance / bundle.dc(20) - strand, growth * growth / 2048,
+               {1e-3, 0, "next term (a/delta)^4 of the strand's series"}));
   // A ferrite sheet raises the field at the turns, and with it the loss.
   Plane sheet;
   sheet.permeability = 1000, sheet.distance = 0.3e-3;
