@@ -47,6 +47,17 @@ int main(int argc, char** argv) {
   add_common(settle_app, settle.common);
   settle_app->footer("Example: couplet settle netlists/dock.toml --set factor=0.2 --verbose");
 
+  couplet::CoilCommand coil;
+  auto* coil_app = app.add_subcommand("coil", "inductance, coupling, resistance and field of coils from their geometry");
+  coil_app->add_option("FILE", coil.file, "the coils, a TOML file")->required();
+  coil_app->add_option("--set", coil.set, "TABLE.KEY=VALUE: another value, with its unit");
+  coil_app->add_option("--factor", coil.factor, "also find the gap at which the coils have this coupling factor");
+  coil_app->add_option("--json", coil.json, "everything as JSON to this path; - for standard output");
+  coil_app->add_option("--plot", coil.plot, "coupling factor over gap and shift as SVG to this path");
+  coil_app->add_flag("--force", coil.force, "overwrite existing files");
+  coil_app->add_flag("--quiet", coil.quiet, "no summary");
+  coil_app->footer("Example: couplet coil netlists/coils/tool_crib_pad.toml --set place.gap=\"3 mm\" --factor 0.3");
+
   std::string kind;
   auto* parts_app = app.add_subcommand("parts", "which kinds of parts there are, with keys, units and defaults");
   parts_app->add_option("KIND", kind, "show one kind in full");
@@ -61,6 +72,7 @@ int main(int argc, char** argv) {
   try {
     if (*start_app) return couplet::start_command(start);
     if (*settle_app) return couplet::settle_command(settle);
+    if (*coil_app) return couplet::coil_command(coil);
     if (*parts_app) return couplet::parts_command(kind);
   } catch (const couplet::InputError& error) {
     fmt::print(stderr, "{}\n", error.what());
