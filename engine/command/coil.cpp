@@ -32,6 +32,23 @@ struct Answer {
 
 std::string quantity(double value, const char* unit) { return print_quantity(value, unit, 4); }
 
+/// Breaks a long sentence into lines of at most 100 characters, the later ones indented.
+std::string wrapped(const std::string& text, const std::string& first, const std::string& later) {
+  std::string out = first;
+  size_t length = first.size();
+  for (size_t from = 0; from < text.size();) {
+    const size_t space = std::min(text.find(' ', from), text.size());
+    const bool fresh = from == 0;
+    if (!fresh && length + 1 + space - from > 100)
+      out += "\n" + later, length = later.size();
+    else if (!fresh)
+      out += " ", ++length;
+    out += text.substr(from, space - from), length += space - from;
+    from = space + 1;
+  }
+  return out;
+}
+
 /// Geometry that cannot be is the file's fault: name the file.
 template <class Work>
 auto blame(const CoilFile& file, const Work& work) {
@@ -58,7 +75,8 @@ LinkValues lone_values(const CoilFile& file) {
   return v;
 }
 
-coil::Ladder ladder_of(const CoilFile& file, const coil::Winding& winding, const std::optional<coil::Plane>& behind, double inductance) {
+coil::Ladder ladder_of(const CoilFile& file, const coil::Winding& winding,
+                       const std::optional<coil::Plane>& behind, double inductance) {
   const Coil one = coil::build(winding);
   coil::Surroundings own;
   own.behind_first = behind;
@@ -79,7 +97,8 @@ std::vector<coil::FieldAt> fields_of(const CoilFile& file) {
   scene.second_in_first = file.second ? coil::pose(scene.first, scene.second, file.place) : coil::Pose{};
   scene.surroundings = file.sheets;
   const double second = file.second ? file.field->second_current : 0;
-  const coil::CurrentLine line{file.frequency, file.field->first_current, std::polar(second, file.field->phase)};
+  const coil::CurrentLine line{file.frequency, file.field->first_current,
+                               std::polar(second, file.field->phase)};
   std::vector<coil::FieldAt> list;
   for (const double d : file.field->distances) list.push_back(coil::largest_field(scene, {line}, d));
   return list;
@@ -93,13 +112,15 @@ std::optional<PositionTable> map_of(const CoilFile& file, bool gap_wanted) {
   if (gaps.empty())
     for (const double g : coil::band(0.02 * reach, 4 * reach, 40)) gaps.push_back(g);
   if (shifts.empty()) shifts = {file.place.shift};
-  return PositionTable(coil::tabulate({file.first, *file.second, file.place, file.sheets}, gaps, shifts, {file.place.tilt}, file.frequency, file.temperature));
+  return PositionTable(coil::tabulate({file.first, *file.second, file.place, file.sheets}, gaps, shifts,
+                                      {file.place.tilt}, file.frequency, file.temperature));
 }
 
 Answer work_out(const CoilFile& file, std::optional<double> factor) {
   Answer a;
   if (file.second) {
-    a.values = coil::link_values({file.first, *file.second, file.place, file.sheets}, file.frequency, file.temperature);
+    a.values = coil::link_values({file.first, *file.second, file.place, file.sheets}, file.frequency,
+                                 file.temperature);
     a.map = map_of(file, factor.has_value());
   } else {
     a.values = lone_values(file);
@@ -112,7 +133,8 @@ Answer work_out(const CoilFile& file, std::optional<double> factor) {
   if (file.field) a.fields = fields_of(file);
   if (file.ladder) {
     a.first_ladder = ladder_of(file, file.first, file.sheets.behind_first, a.values.first);
-    if (file.second) a.second_ladder = ladder_of(file, *file.second, file.sheets.behind_second, a.values.second);
+    if (file.second)
+      a.second_ladder = ladder_of(file, *file.second, file.sheets.behind_second, a.values.second);
   }
   return a;
 }
@@ -132,12 +154,16 @@ Figures figures_of(const CoilFile& file, const Answer& a) {
   if (omega > 0) f.set("second.quality", omega * v.second / v.second_resistance, "1");
   f.set("mutual", v.mutual, "H");
   f.set("coupling", v.coupling, "1");
-  if (omega > 0) f.set("efficiency.best", coil::best_efficiency(v.coupling, f.value("first.quality"), f.value("second.quality")), "1");
+  if (omega > 0)
+    f.set("efficiency.best",
+          coil::best_efficiency(v.coupling, f.value("first.quality"), f.value("second.quality")), "1");
   return f;
 }
 
-void print_coil(const char* name, double inductance, double resistance, double dc, double quality, double frequency) {
-  fmt::print("  {:<10}{:>12}{:>14}{:>14}", name, quantity(inductance, "H"), quantity(dc, "ohm"), quantity(resistance, "ohm"));
+void print_coil(const char* name, double inductance, double resistance, double dc, double quality,
+                double frequency) {
+  fmt::print("  {:<10}{:>12}{:>14}{:>14}", name, quantity(inductance, "H"), quantity(dc, "ohm"),
+             quantity(resistance, "ohm"));
   if (frequency > 0) fmt::print("{:>10.1f}", quality);
   fmt::print("\n");
 }
@@ -151,58 +177,93 @@ void print_map(const PositionTable& map) {
   fmt::print("\n");
   for (const double gap : map.gaps()) {
     fmt::print("  {:>8.4g}", gap * 1e3);
-    for (size_t i = 0; i < shifts.size(); i += step) fmt::print("{:>9.4f}", map.coupling({gap, shifts[i], map.tilts().front()}));
+    for (size_t i = 0; i < shifts.size(); i += step)
+      fmt::print("{:>9.4f}", map.coupling({gap, shifts[i], map.tilts().front()}));
     fmt::print("\n");
   }
   if (step > 1) fmt::print("  (every {}. shift is shown; --json has all)\n", step);
 }
 
 void print_fields(const CoilFile& file, const Answer& a) {
-  fmt::print("\nFlux density, largest at each distance from the copper (rms), and share of the ICNIRP 2010 reference level\n");
-  fmt::print("  {:>10}{:>14}{:>10}{:>14}   {}\n", "distance", "flux density", "public", "occupational", "where: x, y, z in mm from the first coil's middle");
+  fmt::print(
+      "\nFlux density, largest at each distance from the copper (rms), and share of the ICNIRP 2010 "
+      "reference level\n");
+  fmt::print("  {:>10}{:>14}{:>10}{:>14}   {}\n", "distance", "flux density", "public", "occupational",
+             "where: x, y, z in mm from the first coil's middle");
   for (size_t i = 0; i < a.fields.size(); ++i) {
     const coil::FieldAt& f = a.fields[i];
-    fmt::print("  {:>10}{:>14}{:>9.0f}%{:>13.0f}%   {:.0f}, {:.0f}, {:.0f}\n", quantity(file.field->distances[i], "m"), quantity(f.flux_density, "T"), 100 * f.public_share,
+    fmt::print("  {:>10}{:>14}{:>9.0f}%{:>13.0f}%   {:.0f}, {:.0f}, {:.0f}\n",
+               quantity(file.field->distances[i], "m"), quantity(f.flux_density, "T"), 100 * f.public_share,
                100 * f.occupational_share, f.at.x() * 1e3, f.at.y() * 1e3, f.at.z() * 1e3);
   }
-  fmt::print("  {}\n", coil::field_caution());
+  fmt::print("{}\n", wrapped(coil::field_caution(), "  ", "  "));
 }
 
 void print_ladder(const char* name, const coil::Ladder& l) {
-  fmt::print("\nLadder of the {} coil, {} to {}: in series {} and {}\n", name, quantity(l.low, "Hz"), quantity(l.high, "Hz"), quantity(l.resistance, "ohm"), quantity(l.inductance, "H"));
-  for (const coil::Branch& b : l.branches) fmt::print("  and a branch of {} in parallel with {}\n", quantity(b.resistance, "ohm"), quantity(b.inductance, "H"));
-  fmt::print("  resistance off by {:.2g} % at most (at {}), inductance by {:.2g} %\n", 100 * l.resistance_deviation, quantity(l.resistance_deviation_at, "Hz"), 100 * l.inductance_deviation);
+  fmt::print("\nLadder of the {} coil, {} to {}: in series {} and {}\n", name, quantity(l.low, "Hz"),
+             quantity(l.high, "Hz"), quantity(l.resistance, "ohm"), quantity(l.inductance, "H"));
+  for (const coil::Branch& b : l.branches)
+    fmt::print("  and a branch of {} in parallel with {}\n", quantity(b.resistance, "ohm"),
+               quantity(b.inductance, "H"));
+  fmt::print("  resistance off by {:.2g} % at most (at {}), inductance by {:.2g} %\n",
+             100 * l.resistance_deviation, quantity(l.resistance_deviation_at, "Hz"),
+             100 * l.inductance_deviation);
 }
 
-void print_summary(const CoilFile& file, const Answer& a, const Figures& figures, std::optional<double> factor) {
+void print_summary(const CoilFile& file, const Answer& a, const Figures& figures,
+                   std::optional<double> factor) {
   const LinkValues& v = a.values;
   fmt::print("{}\n", file.title.empty() ? file.file : file.title);
-  fmt::print("At {}, copper at {:.4g} degC\n\n", file.frequency > 0 ? quantity(file.frequency, "Hz") : "dc", file.temperature);
-  fmt::print("  {:<10}{:>12}{:>14}{:>14}{}\n", "coil", "inductance", "resistance dc", "resistance", file.frequency > 0 ? "   quality" : "");
-  print_coil("first", v.first, v.first_resistance, v.first_resistance_dc, figures.value("first.quality"), file.frequency);
+  fmt::print("At {}, copper at {:.4g} degC\n\n", file.frequency > 0 ? quantity(file.frequency, "Hz") : "dc",
+             file.temperature);
+  fmt::print("  {:<10}{:>12}{:>14}{:>14}{}\n", "coil", "inductance", "resistance dc", "resistance",
+             file.frequency > 0 ? "   quality" : "");
+  print_coil("first", v.first, v.first_resistance, v.first_resistance_dc, figures.value("first.quality"),
+             file.frequency);
   if (file.second) {
-    print_coil("second", v.second, v.second_resistance, v.second_resistance_dc, figures.value("second.quality"), file.frequency);
-    fmt::print("\nAt gap {}, shift {}, tilt {:.4g} deg: coupling factor {:.4f}, mutual inductance {}\n", quantity(file.place.gap, "m"), quantity(file.place.shift, "m"), file.place.tilt * 180 / coil::pi,
-               v.coupling, quantity(v.mutual, "H"));
-    if (file.frequency > 0) fmt::print("Best efficiency from coil to coil, at the load that suits it: {:.1f} %\n", 100 * figures.value("efficiency.best"));
+    print_coil("second", v.second, v.second_resistance, v.second_resistance_dc,
+               figures.value("second.quality"), file.frequency);
+    fmt::print("\nAt gap {}, shift {}, tilt {:.4g} deg: coupling factor {:.4f}, mutual inductance {}\n",
+               quantity(file.place.gap, "m"), quantity(file.place.shift, "m"),
+               file.place.tilt * 180 / coil::pi, v.coupling, quantity(v.mutual, "H"));
+    if (file.frequency > 0)
+      fmt::print("Best efficiency from coil to coil, at the load that suits it: {:.1f} %\n",
+                 100 * figures.value("efficiency.best"));
   }
   if (factor) {
     std::string gaps;
     for (const double g : a.gaps) gaps += (gaps.empty() ? "" : " and ") + quantity(g, "m");
-    fmt::print("Coupling factor {:.4g}: {}\n", *factor, gaps.empty() ? fmt::format("at no gap from {} to {}", quantity(a.map->gaps().front(), "m"), quantity(a.map->gaps().back(), "m")) : "at a gap of " + gaps);
+    fmt::print("Coupling factor {:.4g}: {}\n", *factor,
+               gaps.empty() ? fmt::format("at no gap from {} to {}", quantity(a.map->gaps().front(), "m"),
+                                          quantity(a.map->gaps().back(), "m"))
+                            : "at a gap of " + gaps);
   }
   if (a.map && !file.gaps.empty()) print_map(*a.map);
   if (file.field) print_fields(file, a);
   if (a.first_ladder) print_ladder("first", *a.first_ladder);
   if (a.second_ladder) print_ladder("second", *a.second_ladder);
   fmt::print("\nWhat the values leave out\n");
-  for (const auto& n : v.notes) fmt::print("  - {}\n", n);
+  for (const auto& n : v.notes) fmt::print("{}\n", wrapped(n, "  - ", "    "));
 }
 
 void add_ladder(Json& json, const char* name, const coil::Ladder& l) {
-  json.key(name).open('{').key("resistance").value(l.resistance).key("inductance").value(l.inductance).key("branches").open('[');
-  for (const coil::Branch& b : l.branches) json.open('{').key("resistance").value(b.resistance).key("inductance").value(b.inductance).close('}');
-  json.close(']').key("low").value(l.low).key("high").value(l.high).key("resistance_deviation").value(l.resistance_deviation);
+  json.key(name)
+      .open('{')
+      .key("resistance")
+      .value(l.resistance)
+      .key("inductance")
+      .value(l.inductance)
+      .key("branches")
+      .open('[');
+  for (const coil::Branch& b : l.branches)
+    json.open('{').key("resistance").value(b.resistance).key("inductance").value(b.inductance).close('}');
+  json.close(']')
+      .key("low")
+      .value(l.low)
+      .key("high")
+      .value(l.high)
+      .key("resistance_deviation")
+      .value(l.resistance_deviation);
   json.key("inductance_deviation").value(l.inductance_deviation).close('}');
 }
 
@@ -221,7 +282,15 @@ std::string details(const CoilFile& file, const Answer& a, std::optional<double>
     for (const double gap : a.map->gaps())
       for (const double shift : a.map->shifts()) {
         const coil::PairValues v = a.map->at({gap, shift, a.map->tilts().front()});
-        json.open('{').key("gap").value(gap).key("shift").value(shift).key("coupling").value(v.coupling()).key("mutual").value(v.mutual);
+        json.open('{')
+            .key("gap")
+            .value(gap)
+            .key("shift")
+            .value(shift)
+            .key("coupling")
+            .value(v.coupling())
+            .key("mutual")
+            .value(v.mutual);
         json.key("first_inductance").value(v.first).key("second_inductance").value(v.second).close('}');
       }
     json.close(']');
@@ -230,8 +299,22 @@ std::string details(const CoilFile& file, const Answer& a, std::optional<double>
     json.key("field").open('[');
     for (size_t i = 0; i < a.fields.size(); ++i) {
       const coil::FieldAt& f = a.fields[i];
-      json.open('{').key("distance").value(file.field->distances[i]).key("flux_density").value(f.flux_density).key("public_share").value(f.public_share);
-      json.key("occupational_share").value(f.occupational_share).key("at").open('[').value(f.at.x()).value(f.at.y()).value(f.at.z()).close(']').close('}');
+      json.open('{')
+          .key("distance")
+          .value(file.field->distances[i])
+          .key("flux_density")
+          .value(f.flux_density)
+          .key("public_share")
+          .value(f.public_share);
+      json.key("occupational_share")
+          .value(f.occupational_share)
+          .key("at")
+          .open('[')
+          .value(f.at.x())
+          .value(f.at.y())
+          .value(f.at.z())
+          .close(']')
+          .close('}');
     }
     json.close(']').key("field_caution").value(coil::field_caution());
   }
@@ -241,7 +324,8 @@ std::string details(const CoilFile& file, const Answer& a, std::optional<double>
 }
 
 void keep_existing(const std::string& path, bool force) {
-  if (!force && !path.empty() && path != "-" && std::filesystem::exists(path)) throw InputError(fmt::format("{}: exists already; give --force to overwrite it", path));
+  if (!force && !path.empty() && path != "-" && std::filesystem::exists(path))
+    throw InputError(fmt::format("{}: exists already; give --force to overwrite it", path));
 }
 
 std::string plot_of(const CoilFile& file, const PositionTable& map) {
@@ -249,7 +333,9 @@ std::string plot_of(const CoilFile& file, const PositionTable& map) {
   const size_t step = (map.shifts().size() + 7) / 8;
   // A fine grid of gaps: the curve between the points is what a study would use.
   std::vector<double> gaps;
-  for (int i = 0; i <= 120; ++i) gaps.push_back(std::min(map.gaps().front() + (map.gaps().back() - map.gaps().front()) * i / 120.0, map.gaps().back()));
+  for (int i = 0; i <= 120; ++i)
+    gaps.push_back(std::min(map.gaps().front() + (map.gaps().back() - map.gaps().front()) * i / 120.0,
+                            map.gaps().back()));
   for (size_t i = 0; i < map.shifts().size(); i += step) {
     CouplingCurve& c = curves.emplace_back();
     c.shift = map.shifts()[i];
@@ -267,11 +353,15 @@ int coil_command(const CoilCommand& options) {
   if (!options.factor.empty()) {
     const ReadQuantity read = read_quantity(options.factor, "1");
     if (!read.problem.empty()) throw InputError("--factor: " + read.problem);
-    if (!file.second) throw InputError(fmt::format("{}: --factor needs a second coil; add [second]", file.file));
+    if (!file.second)
+      throw InputError(fmt::format("{}: --factor needs a second coil; add [second]", file.file));
     factor = read.value;
   }
   if (!options.plot.empty() && file.gaps.size() < 2)
-    throw InputError(fmt::format("{}: --plot needs [map] with two gaps or more, like gaps = {{ from = \"1 mm\", to = \"20 mm\", points = 20 }}", file.file));
+    throw InputError(
+        fmt::format("{}: --plot needs [map] with two gaps or more, like gaps = {{ from = \"1 mm\", to = \"20 "
+                    "mm\", points = 20 }}",
+                    file.file));
   const Answer answer = blame(file, [&] { return work_out(file, factor); });
   const Figures figures = figures_of(file, answer);
   if (!options.quiet && options.json != "-") print_summary(file, answer, figures, factor);

@@ -13,6 +13,7 @@ struct CouplingCurve {
 };
 
 /// SVG text, for a page or a browser; gaps in m.
-std::string coupling_plot(const std::string& title, const std::vector<double>& gaps, const std::vector<CouplingCurve>& curves);
+std::string coupling_plot(const std::string& title, const std::vector<double>& gaps,
+                          const std::vector<CouplingCurve>& curves);
 
 }  // namespace couplet

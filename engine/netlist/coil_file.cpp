@@ -34,17 +34,21 @@ class CoilFileReader {
   CoilFileReader(CoilFile& made, Complaints& complaints) : made_(made), complaints_(complaints) {}
 
   void read(const toml::table& root) {
-    only(root, {"title", "frequency", "temperature", "first", "second", "place", "behind_first", "behind_second", "map", "field", "ladder"},
+    only(root,
+         {"title", "frequency", "temperature", "first", "second", "place", "behind_first", "behind_second",
+          "map", "field", "ladder"},
          "the coil file");
     made_.title = word(root, "title", {}, "");
-    fields(root, "the coil file", {{"frequency", "Hz", &made_.frequency}, {"temperature", "degC", &made_.temperature, -200, 300}});
+    fields(root, "the coil file",
+           {{"frequency", "Hz", &made_.frequency}, {"temperature", "degC", &made_.temperature, -200, 300}});
     if (const auto* first = sub(root, "first"))
       read_winding(*first, "first", made_.first);
     else
-      complaints_.add({}, "there is no coil; add a table [first] with shape, turns, conductor and sizes");
+      complain({}, "there is no coil; add a table [first] with shape, turns, conductor and sizes");
     if (const auto* second = sub(root, "second")) read_winding(*second, "second", made_.second.emplace());
     if (const auto* place = sub(root, "place")) read_place(*place);
-    for (const auto& [name, plane] : {std::pair{"behind_first", &made_.sheets.behind_first}, {"behind_second", &made_.sheets.behind_second}})
+    for (const auto& [name, plane] : {std::pair{"behind_first", &made_.sheets.behind_first},
+                                      {"behind_second", &made_.sheets.behind_second}})
       if (const auto* table = sub(root, name)) read_sheet(*table, name, plane->emplace());
     if (const auto* map = sub(root, "map")) read_map(*map);
     if (const auto* field = sub(root, "field")) read_field(*field);
@@ -52,38 +56,48 @@ class CoilFileReader {
     if (!made_.second)
       for (const char* name : {"place", "behind_second", "map"})
         if (const auto* node = root.get(name))
-          complaints_.add(place_of(*node), fmt::format("[{}] needs a second coil; add [second] or leave it out", name));
+          complain(place_of(*node),
+                   fmt::format("[{}] needs a second coil; add [second] or leave it out", name));
   }
 
  private:
+  void complain(Place place, const std::string& what) {
+    ++count_;
+    complaints_.add(place, what);
+  }
+
   void only(const toml::table& table, const std::vector<std::string>& allowed, const std::string& where) {
     for (auto&& [key, node] : table) {
       const std::string name(key.str());
       const auto& at = key.source().begin;
       if (std::find(allowed.begin(), allowed.end(), name) == allowed.end())
-        complaints_.add({static_cast<int>(at.line), static_cast<int>(at.column)},
-                        fmt::format("unknown key \"{}\" in {}{}", name.substr(0, 64), where, nearest(name, allowed)));
+        complain(
+            {static_cast<int>(at.line), static_cast<int>(at.column)},
+            fmt::format("unknown key \"{}\" in {}{}", name.substr(0, 64), where, nearest(name, allowed)));
     }
   }
 
   const toml::table* sub(const toml::table& root, const std::string& name) {
     const auto* node = root.get(name);
     if (!node) return nullptr;
-    if (!node->is_table()) complaints_.add(place_of(*node), fmt::format("{} must be a table; write [{}]", name, name));
+    if (!node->is_table())
+      complain(place_of(*node), fmt::format("{} must be a table; write [{}]", name, name));
     return node->as_table();
   }
 
   /// A text; one of `words` where there are any.
-  std::string word(const toml::table& table, const std::string& key, const std::vector<std::string>& words, const std::string& fallback) {
+  std::string word(const toml::table& table, const std::string& key, const std::vector<std::string>& words,
+                   const std::string& fallback) {
     const auto* node = table.get(key);
     if (!node) return fallback;
     const auto value = node->value<std::string>();
     if (!node->is_string() || !value) {
-      complaints_.add(place_of(*node), fmt::format("{} must be a text in quotes", key));
+      complain(place_of(*node), fmt::format("{} must be a text in quotes", key));
       return fallback;
     }
     if (words.empty() || std::find(words.begin(), words.end(), *value) != words.end()) return *value;
-    complaints_.add(place_of(*node), fmt::format("{} cannot be \"{}\"{}", key, value->substr(0, 64), nearest(*value, words)));
+    complain(place_of(*node),
+             fmt::format("{} cannot be \"{}\"{}", key, value->substr(0, 64), nearest(*value, words)));
     return fallback;
   }
 
@@ -99,9 +113,11 @@ class CoilFileReader {
     } else if (node.is_number() && unit == "1") {
       return *node.value<double>();
     } else {
-      problem = unit == "1" ? "must be a number" : fmt::format("must be a text with a unit, like \"10 {}\"", unit == "m" ? "mm" : unit);
+      problem = unit == "1"
+                    ? "must be a number"
+                    : fmt::format("must be a text with a unit, like \"10 {}\"", unit == "m" ? "mm" : unit);
     }
-    complaints_.add(place_of(node), fmt::format("{}: {}", what, problem));
+    complain(place_of(node), fmt::format("{}: {}", what, problem));
     return std::numeric_limits<double>::quiet_NaN();
   }
 
@@ -114,9 +130,12 @@ class CoilFileReader {
       if (!std::isfinite(value)) continue;
       *f.target = value;
       if (value < f.low || value > f.high)
-        complaints_.add(place_of(*node), fmt::format("{} is {}; it must {}", what, print_quantity(value, f.unit),
-                                                     std::isinf(f.high) ? fmt::format("be at least {}", print_quantity(f.low, f.unit))
-                                                                        : fmt::format("lie between {} and {}", print_quantity(f.low, f.unit), print_quantity(f.high, f.unit))));
+        complain(place_of(*node),
+                 fmt::format("{} is {}; it must {}", what, print_quantity(value, f.unit),
+                             std::isinf(f.high)
+                                 ? fmt::format("be at least {}", print_quantity(f.low, f.unit))
+                                 : fmt::format("lie between {} and {}", print_quantity(f.low, f.unit),
+                                               print_quantity(f.high, f.unit))));
     }
   }
 
@@ -146,38 +165,53 @@ class CoilFileReader {
                                      {"width", "m", &w.conductor.width},
                                      {"thickness", "m", &w.conductor.thickness}};
     only(table, names(list, {"shape", "conductor"}), which);
-    static const std::map<std::string, Shape> shapes = {{"flat_round", Shape::flat_round}, {"flat_rectangular", Shape::flat_rectangular}, {"solenoid", Shape::solenoid}, {"multilayer", Shape::multilayer}};
-    static const std::map<std::string, Conductor::Kind> kinds = {{"wire", Conductor::Kind::wire}, {"litz", Conductor::Kind::litz}, {"trace", Conductor::Kind::trace}};
-    w.shape = shapes.at(word(table, "shape", {"flat_round", "flat_rectangular", "solenoid", "multilayer"}, "flat_round"));
+    static const std::map<std::string, Shape> shapes = {{"flat_round", Shape::flat_round},
+                                                        {"flat_rectangular", Shape::flat_rectangular},
+                                                        {"solenoid", Shape::solenoid},
+                                                        {"multilayer", Shape::multilayer}};
+    static const std::map<std::string, Conductor::Kind> kinds = {
+        {"wire", Conductor::Kind::wire}, {"litz", Conductor::Kind::litz}, {"trace", Conductor::Kind::trace}};
+    w.shape = shapes.at(
+        word(table, "shape", {"flat_round", "flat_rectangular", "solenoid", "multilayer"}, "flat_round"));
     w.conductor.kind = kinds.at(word(table, "conductor", {"wire", "litz", "trace"}, "wire"));
-    const bool clean = complaints_.empty();
+    const int before = count_;
     fields(table, which, list);
     for (const auto& [name, value] : {std::pair{"layers", layers}, {"strands", strands}})
-      if (value != std::floor(value)) complaints_.add(place_of(*table.get(name)), fmt::format("{} of {} must be a whole number", name, which));
+      if (value != std::floor(value))
+        complain(place_of(*table.get(name)), fmt::format("{} of {} must be a whole number", name, which));
     w.layers = static_cast<int>(layers), w.conductor.strands = static_cast<int>(strands);
-    if (clean && !complaints_.empty()) return;  // what follows from wrong values would only confuse
+    if (count_ > before) return;  // what follows from wrong values would only confuse
     for (const coil::Problem& p : coil::problems(w)) {
       const auto* node = table.get(p.key);
-      complaints_.add(place_of(node ? *node : table), fmt::format("{} of {}: {}", p.key, which, p.text));
+      complain(place_of(node ? *node : table), fmt::format("{} of {}: {}", p.key, which, p.text));
     }
   }
 
   void read_place(const toml::table& table) {
     coil::Placement& p = made_.place;
     const double endless = std::numeric_limits<double>::infinity();
-    const std::vector<Field> list = {{"gap", "m", &p.gap, -1, endless}, {"shift", "m", &p.shift, -10, 10}, {"shift_across", "m", &p.shift_across, -10, 10}, {"tilt", "rad", &p.tilt, -coil::pi, coil::pi}};
+    const std::vector<Field> list = {{"gap", "m", &p.gap, -1, endless},
+                                     {"shift", "m", &p.shift, -10, 10},
+                                     {"shift_across", "m", &p.shift_across, -10, 10},
+                                     {"tilt", "rad", &p.tilt, -coil::pi, coil::pi}};
     only(table, names(list), "place");
     fields(table, "place", list);
   }
 
   void read_sheet(const toml::table& table, const std::string& which, coil::Plane& plane) {
-    const std::vector<Field> list = {{"permeability", "1", &plane.permeability, 1}, {"distance", "m", &plane.distance}, {"thickness", "m", &plane.thickness}, {"reach", "m", &plane.reach}};
+    const std::vector<Field> list = {{"permeability", "1", &plane.permeability, 1},
+                                     {"distance", "m", &plane.distance},
+                                     {"thickness", "m", &plane.thickness},
+                                     {"reach", "m", &plane.reach}};
     only(table, names(list, {"material"}), which);
     fields(table, which, list);
     plane.conducting = word(table, "material", {"ferrite", "conductor"}, "ferrite") == "conductor";
-    if (!table.get("material")) complaints_.add(place_of(table), fmt::format("{} has no material; write \"ferrite\" or \"conductor\"", which));
+    if (!table.get("material"))
+      complain(place_of(table), fmt::format("{} has no material; write \"ferrite\" or \"conductor\"", which));
     if (!plane.conducting && !table.get("permeability"))
-      complaints_.add(place_of(table), fmt::format("{} has no permeability; add the relative permeability at the working frequency", which));
+      complain(place_of(table),
+               fmt::format("{} has no permeability; add the relative permeability at the working frequency",
+                           which));
   }
 
   /// A list of quantities, or { from, to, points }.
@@ -188,14 +222,19 @@ class CoilFileReader {
     if (const auto* span = node->as_table()) {
       double from = 0, to = 0, points = 0;
       only(*span, {"from", "to", "points"}, key);
-      fields(*span, key, {{"from", unit, &from, -10}, {"to", unit, &to, -10}, {"points", "1", &points, 2, 1000}});
-      if (points < 2 || !(to > from)) complaints_.add(place_of(*node), fmt::format("{} must run upward from one value to another in 2 points or more", key));
-      for (int i = 0; i < points && points >= 2; ++i) list.push_back(from + (to - from) * i / (std::floor(points) - 1));
+      fields(*span, key,
+             {{"from", unit, &from, -10}, {"to", unit, &to, -10}, {"points", "1", &points, 2, 1000}});
+      if (points < 2 || !(to > from))
+        complain(place_of(*node),
+                 fmt::format("{} must run upward from one value to another in 2 points or more", key));
+      for (int i = 0; i < points && points >= 2; ++i)
+        list.push_back(from + (to - from) * i / (std::floor(points) - 1));
     } else if (const auto* array = node->as_array()) {
       for (const auto& item : *array) list.push_back(quantity(item, unit, key));
       std::sort(list.begin(), list.end());
     } else {
-      complaints_.add(place_of(*node), fmt::format("{} must be a list like [\"1 mm\", \"2 mm\"], or {{ from, to, points }}", key));
+      complain(place_of(*node),
+               fmt::format("{} must be a list like [\"1 mm\", \"2 mm\"], or {{ from, to, points }}", key));
     }
     return list;
   }
@@ -203,35 +242,43 @@ class CoilFileReader {
   void read_map(const toml::table& table) {
     only(table, {"gaps", "shifts"}, "map");
     made_.gaps = series(table, "gaps", "m"), made_.shifts = series(table, "shifts", "m");
-    if (made_.gaps.empty()) complaints_.add(place_of(table), "map has no gaps; add gaps = [\"1 mm\", \"2 mm\"] or { from, to, points }");
+    if (made_.gaps.empty())
+      complain(place_of(table), "map has no gaps; add gaps = [\"1 mm\", \"2 mm\"] or { from, to, points }");
     if (made_.shifts.empty()) made_.shifts = {made_.place.shift};
   }
 
   void read_field(const toml::table& table) {
     FieldRequest& f = made_.field.emplace();
-    const std::vector<Field> list = {{"first_current", "A", &f.first_current}, {"second_current", "A", &f.second_current}, {"phase", "rad", &f.phase, -100, 100}};
+    const std::vector<Field> list = {{"first_current", "A", &f.first_current},
+                                     {"second_current", "A", &f.second_current},
+                                     {"phase", "rad", &f.phase, -100, 100}};
     only(table, names(list, {"distances"}), "field");
     fields(table, "field", list);
     f.distances = series(table, "distances", "m");
     if (!(made_.frequency >= 1) || made_.frequency > 10e6)
-      complaints_.add(place_of(table), "the field needs frequency, between 1 Hz and 10 MHz, at the top of the file");
+      complain(place_of(table), "the field needs frequency, between 1 Hz and 10 MHz, at the top of the file");
   }
 
   void read_ladder(const toml::table& table) {
     LadderRequest& l = made_.ladder.emplace();
-    const std::vector<Field> list = {{"low", "Hz", &l.low, 1e-3}, {"high", "Hz", &l.high, 1e-3}, {"deviation", "1", &l.deviation, 1e-9, 1}};
+    const std::vector<Field> list = {{"low", "Hz", &l.low, 1e-3},
+                                     {"high", "Hz", &l.high, 1e-3},
+                                     {"deviation", "1", &l.deviation, 1e-9, 1}};
     only(table, names(list), "ladder");
     fields(table, "ladder", list);
-    if (!(l.low > 0) || !(l.high > l.low)) complaints_.add(place_of(table), "ladder needs a band: low and high, low below high");
+    if (!(l.low > 0) || !(l.high > l.low))
+      complain(place_of(table), "ladder needs a band: low and high, low below high");
   }
 
   CoilFile& made_;
   Complaints& complaints_;
+  int count_ = 0;  // of complaints
 };
 
 void override_key(toml::table& root, const std::string& text, Complaints& complaints) {
   const auto equals = text.find('='), dot = text.find('.');
-  if (equals == std::string::npos) return complaints.add({}, fmt::format("--set {}: write TABLE.KEY=VALUE, like place.gap=\"3 mm\"", text));
+  if (equals == std::string::npos)
+    return complaints.add({}, fmt::format("--set {}: write TABLE.KEY=VALUE, like place.gap=\"3 mm\"", text));
   const std::string value = text.substr(equals + 1);
   if (dot == std::string::npos || dot > equals) {
     root.insert_or_assign(text.substr(0, equals), value);
@@ -244,7 +291,8 @@ void override_key(toml::table& root, const std::string& text, Complaints& compla
 
 }  // namespace
 
-CoilFile parse_coil_file(const std::string& text, const std::string& file, const std::vector<std::string>& overrides) {
+CoilFile parse_coil_file(const std::string& text, const std::string& file,
+                         const std::vector<std::string>& overrides) {
   CoilFile made;
   made.file = file, made.text = text, made.sha256 = sha256(text);
   Complaints complaints(file, text);
@@ -253,7 +301,8 @@ CoilFile parse_coil_file(const std::string& text, const std::string& file, const
     root = toml::parse(text, file);
   } catch (const toml::parse_error& error) {
     const auto& at = error.source().begin;
-    complaints.add({static_cast<int>(at.line), static_cast<int>(at.column)}, std::string(error.description()));
+    complaints.add({static_cast<int>(at.line), static_cast<int>(at.column)},
+                   std::string(error.description()));
     complaints.raise();
   }
   for (const std::string& o : overrides) override_key(root, o, complaints);
@@ -265,7 +314,8 @@ CoilFile parse_coil_file(const std::string& text, const std::string& file, const
 CoilFile read_coil_file(const std::string& file, const std::vector<std::string>& overrides) {
   std::ifstream in(file, std::ios::binary);
   const std::string text{std::istreambuf_iterator<char>(in), {}};
-  if (!in.is_open() || in.bad()) throw InputError(fmt::format("{}: cannot be read; check the name and the folder", file));
+  if (!in.is_open() || in.bad())
+    throw InputError(fmt::format("{}: cannot be read; check the name and the folder", file));
   return parse_coil_file(text, file, overrides);
 }
 

@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: MIT
-// A file that gives coils by their geometry, as `couplet coil` reads it: TOML, values with units, all complaints at once.
+// A file that gives coils by their geometry, as `couplet coil` reads it: TOML, values with units, all
+// complaints at once.
 #pragma once
 
 #include <optional>
@@ -25,8 +26,8 @@ struct LadderRequest {
 
 struct CoilFile {
   std::string file, text, sha256, title;
-  double frequency = 0;      // Hz
-  double temperature = 20;   // degC, of the copper
+  double frequency = 0;     // Hz
+  double temperature = 20;  // degC, of the copper
   coil::Winding first;
   std::optional<coil::Winding> second;
   coil::Placement place;
@@ -36,9 +37,11 @@ struct CoilFile {
   std::optional<LadderRequest> ladder;
 };
 
-/// Reads and checks. `overrides` are "TABLE.KEY=VALUE" texts ("place.gap=3 mm"). Throws InputError with all complaints.
+/// Reads and checks. `overrides` are "TABLE.KEY=VALUE" texts ("place.gap=3 mm"). Throws InputError with all
+/// complaints.
 CoilFile read_coil_file(const std::string& file, const std::vector<std::string>& overrides = {});
 /// The same from text; `file` is the name used in complaints.
-CoilFile parse_coil_file(const std::string& text, const std::string& file, const std::vector<std::string>& overrides = {});
+CoilFile parse_coil_file(const std::string& text, const std::string& file,
+                         const std::vector<std::string>& overrides = {});
 
 }  // namespace couplet
