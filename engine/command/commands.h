@@ -25,6 +25,13 @@ struct FollowCommand {
   std::string along, from, to;
 };
 int follow_command(const FollowCommand& options);
+struct CoilCommand {
+  std::string file;
+  std::vector<std::string> set;
+  std::string json, plot, factor;  // factor: the coupling factor whose gap is wanted
+  bool force = false, quiet = false;
+};
+int coil_command(const CoilCommand& options);
 
 int parts_command(const std::string& kind);
 

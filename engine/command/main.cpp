@@ -54,6 +54,16 @@ int main(int argc, char** argv) {
   follow_app->add_option("--from", follow.from, "first value, with its unit")->required();
   follow_app->add_option("--to", follow.to, "last value, with its unit")->required();
   follow_app->footer("Example: couplet follow netlists/dock.toml --along load --from \"60 ohm\" --to \"6 ohm\"");
+  couplet::CoilCommand coil;
+  auto* coil_app = app.add_subcommand("coil", "inductance, coupling, resistance and field of coils from their geometry");
+  coil_app->add_option("FILE", coil.file, "the coils, a TOML file")->required();
+  coil_app->add_option("--set", coil.set, "TABLE.KEY=VALUE: another value, with its unit");
+  coil_app->add_option("--factor", coil.factor, "also find the gap at which the coils have this coupling factor");
+  coil_app->add_option("--json", coil.json, "everything as JSON to this path; - for standard output");
+  coil_app->add_option("--plot", coil.plot, "coupling factor over gap and shift as SVG to this path");
+  coil_app->add_flag("--force", coil.force, "overwrite existing files");
+  coil_app->add_flag("--quiet", coil.quiet, "no summary");
+  coil_app->footer("Example: couplet coil netlists/coils/tool_crib_pad.toml --set place.gap=\"3 mm\" --factor 0.3");
 
   std::string kind;
   auto* parts_app = app.add_subcommand("parts", "which kinds of parts there are, with keys, units and defaults");
@@ -70,6 +80,7 @@ int main(int argc, char** argv) {
     if (*start_app) return couplet::start_command(start);
     if (*settle_app) return couplet::settle_command(settle);
     if (*follow_app) return couplet::follow_command(follow);
+    if (*coil_app) return couplet::coil_command(coil);
     if (*parts_app) return couplet::parts_command(kind);
   } catch (const couplet::InputError& error) {
     fmt::print(stderr, "{}\n", error.what());
