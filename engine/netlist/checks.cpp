@@ -55,18 +55,19 @@ void check_nodes(const Design& design, Complaints& complaints) {
                                                      parts.front()->name, hint));
   }
   if (!design.rail.empty() && !touched.count(design.rail)) {
-    complaints.add({}, fmt::format("rail names the node \"{}\", which no part touches{}", design.rail,
+    complaints.add(design.role_places.count("rail") ? design.role_places.at("rail") : Place{}, fmt::format("rail names the node \"{}\", which no part touches{}", design.rail,
                                    nearest(design.rail, names)));
   }
 }
 
 void check_roles(const Design& design, Complaints& complaints) {
   const auto names = part_names(design);
+  const auto place = [&](const std::string& role) { return design.role_places.count(role) ? design.role_places.at(role) : Place{}; };
   const auto check = [&](const std::string& role, const std::string& name, const std::string& starts) {
     if (name.empty()) return;
     const PartEntry* part = find_part(design, name);
     if (!part) {
-      complaints.add({}, fmt::format("{} names the part \"{}\", which does not exist{}", role, name,
+      complaints.add(place(role), fmt::format("{} names the part \"{}\", which does not exist{}", role, name,
                                      nearest(name, names)));
     } else if (part->kind->kind.rfind(starts, 0) != 0) {
       complaints.add(part->place,

@@ -50,7 +50,7 @@ void Complaints::raise() const {
 std::string nearest(const std::string& word, const std::vector<std::string>& known) {
   const std::string shown = word.substr(0, 64);
   std::string best;
-  std::size_t least = std::max<std::size_t>(shown.size() / 3, 1) + 1;
+  std::size_t least = shown.size() / 3 + 2;
   for (const auto& candidate : known) {
     // Edit distance (Levenshtein 1966).
     std::vector<std::size_t> row(candidate.size() + 1);

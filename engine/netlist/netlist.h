@@ -85,6 +85,7 @@ struct Design {
   std::vector<std::string> supplies;  // parts; those of role source where the netlist does not say
   std::vector<std::string> assumptions, not_modelled;  // free text for the page
   double derating = 1;                                 // ratings are judged at this share
+  std::map<std::string, Place> role_places;  // where rail, load, regulator, supplies are stated
   std::vector<Given> given;
   std::vector<PartEntry> parts;
   std::vector<CouplingEntry> couplings;

@@ -35,6 +35,9 @@ class Reader {
          {"title", "rail", "load", "regulator", "supplies", "derating", "assumptions", "not_modelled",
           "given", "parts", "coupling", "schedule", "limits", "run"},
          "the netlist");
+    for (const char* role : {"rail", "load", "regulator", "supplies"}) {
+      if (const auto* node = root.get(role)) design_.role_places[role] = place_of(*node);
+    }
     design_.title = text(root, "title");
     design_.rail = text(root, "rail");
     design_.load = text(root, "load");
