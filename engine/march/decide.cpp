@@ -155,11 +155,14 @@ std::string ExactMarch::pile_up_sentence() const {
                      state_->time, list);
 }
 
-bool ExactMarch::resume(MarchState& state, std::string& trouble) {
+bool ExactMarch::resume(MarchState& state, std::string& trouble) { return resume_flipped(state, {}, trouble); }
+
+bool ExactMarch::resume_flipped(MarchState& state, const std::vector<char>& flipped, std::string& trouble) {
   state_ = &state;
   std::copy_n(state.x.data(), n_, x_.begin());
   std::fill(x_.begin() + n_, x_.end(), 0.0);
   enter(circuit_.topology(state.cells));
+  std::copy(flipped.begin(), flipped.end(), changed_.begin());
   const bool good = decide(trouble);
   state_ = nullptr;
   return good;

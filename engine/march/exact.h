@@ -35,6 +35,8 @@ class ExactMarch : public March, private Interpolant {
   /// Decides the cells again for a state whose x was changed from outside, keeping its bits where they hold. False
   /// where no cells fit; `trouble` says why.
   bool resume(MarchState& state, std::string& trouble);
+  /// The same where the bits of some branches (flag by branch) have just been changed.
+  bool resume_flipped(MarchState& state, const std::vector<char>& flipped, std::string& trouble);
 
   const Circuit& circuit() const { return circuit_; }
   MarchSettings& settings() { return settings_; }
