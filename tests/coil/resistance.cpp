@@ -169,8 +169,8 @@ TEST_CASE("windings: dc, growth, and the sign of every change", "[coil]") {
   CHECK(agrees(trace.at(100, 20).resistance, trace.dc(20), {1e-3, 0, "f^2 growth"}));
   for (const Resistance* r : {&solid, &litz, &trace, &backed}) {
     double resistance = r->dc(20), change = 1e-15;
-    for (double f = 1e3; f < 2e7; f *= 1.5) {
-      const Impedance z = r->at(f, 20);
+    for (double rising = 1e3; rising < 2e7; rising *= 1.5) {
+      const Impedance z = r->at(rising, 20);
       CHECK(z.resistance >= resistance);
       CHECK(z.inductance_change <= change + 1e-6 * std::abs(change) + 1e-13);
       resistance = z.resistance, change = z.inductance_change;
