@@ -123,7 +123,11 @@ void Recorder::span(const Span& span) {
 namespace {
 
 // The two loops that run over every signal at every span. Signals are padded to whole vectors; padding is zero.
-// Flags are numbers, so that the compiler keeps to one vector width.
+// Comparisons become vectors only where the compiler need not fear that they trap (nobody here asks for traps);
+// functions of the library would not be inlined under that option.
+#pragma GCC push_options
+#pragma GCC optimize("no-trapping-math")
+
 struct Bounds {
   const double *range, *low, *high;
 };
@@ -131,43 +135,46 @@ struct Bounds {
 COUPLET_WIDE
 bool cubic_serves(int stride, double h, double weight, const double* at0, const double* at1, const Bounds& bounds) {
   const double *slope0 = at0 + stride, *slope1 = at1 + stride;
-  double coarse = 0;
+  const double *range = bounds.range, *low = bounds.low, *high = bounds.high;
+  long long coarse = 0;
   for (int i = 0; i < stride; ++i) {
-    const double rise = at1[i] - at0[i];
-    const double room = bounds.range[i] > std::abs(rise) ? bounds.range[i] : std::abs(rise);
-    const double curvature = 0.5 * h * std::abs(slope1[i] - slope0[i]);
-    const double third = std::abs(0.5 * h * (slope0[i] + slope1[i]) - rise);
-    const double reach = 0.25 * h * (std::abs(slope0[i]) + std::abs(slope1[i]));
+    const double rise = at1[i] - at0[i], size = __builtin_fabs(rise);
+    const double room = range[i] > size ? range[i] : size;
+    const double curvature = 0.5 * h * __builtin_fabs(slope1[i] - slope0[i]);
+    const double third = __builtin_fabs(0.5 * h * (slope0[i] + slope1[i]) - rise);
+    const double reach = 0.25 * h * (__builtin_fabs(slope0[i]) + __builtin_fabs(slope1[i]));
     const double top = (at0[i] > at1[i] ? at0[i] : at1[i]) + reach, bottom = (at0[i] < at1[i] ? at0[i] : at1[i]) - reach;
-    const double bent = (curvature > most_curvature * room ? 1.0 : 0.0) + (third > most_third * room ? 1.0 : 0.0);
-    const double leaves = (top > bounds.high[i] ? 1.0 : 0.0) + (bottom < bounds.low[i] ? 1.0 : 0.0);
-    const double here = bent * leaves + (curvature * weight > room ? 1.0 : 0.0);
-    coarse = coarse > here ? coarse : here;
+    const long long bent = (curvature > most_curvature * room ? 1 : 0) | (third > most_third * room ? 1 : 0);
+    const long long leaves = (top > high[i] ? 1 : 0) | (bottom < low[i] ? 1 : 0);
+    coarse |= (bent & leaves) | (curvature * weight > room ? 1 : 0);
   }
   return coarse == 0;
 }
 
-/// Takes the ends and the integral in; true where some cubic turns in between.
+/// Takes the ends and the integral in; true where some cubic turns in between and may leave the range so far.
 COUPLET_WIDE
-bool gather_ends(int stride, double h, const double* at0, const double* at1, double* low, double* high, double* sum) {
+bool gather_ends(int stride, double h, const double* at0, const double* at1, double* __restrict low, double* __restrict high,
+                 double* __restrict sum) {
   const double *slope0 = at0 + stride, *slope1 = at1 + stride;
   const double half = 0.5 * h, twelfth = h * h / 12;
-  double turns = 0;
+  long long turns = 0;
   for (int i = 0; i < stride; ++i) {
     const double bottom = at0[i] < at1[i] ? at0[i] : at1[i], top = at0[i] > at1[i] ? at0[i] : at1[i];
-    low[i] = low[i] < bottom ? low[i] : bottom;
-    high[i] = high[i] > top ? high[i] : top;
+    const double lowest = low[i] < bottom ? low[i] : bottom, highest = high[i] > top ? high[i] : top;
+    low[i] = lowest;
+    high[i] = highest;
     sum[i] += half * (at0[i] + at1[i]) + twelfth * (slope0[i] - slope1[i]);
     // A cubic rises or falls throughout where both slopes point along the rise and are at most three times it.
     const double rise = at1[i] - at0[i], most = 3 * rise * rise;
     const double a = slope0[i] * h * rise, b = slope1[i] * h * rise;
-    const double reach = 0.25 * h * (std::abs(slope0[i]) + std::abs(slope1[i]));
-    const double leaves = (top + reach > high[i] ? 1.0 : 0.0) + (bottom - reach < low[i] ? 1.0 : 0.0);
-    const double here = leaves * ((a < 0 ? 1.0 : 0.0) + (b < 0 ? 1.0 : 0.0) + (a > most ? 1.0 : 0.0) + (b > most ? 1.0 : 0.0));
-    turns = turns > here ? turns : here;
+    const double reach = 0.25 * h * (__builtin_fabs(slope0[i]) + __builtin_fabs(slope1[i]));
+    const long long leaves = (top + reach > highest ? 1 : 0) | (bottom - reach < lowest ? 1 : 0);
+    turns |= leaves & ((a < 0 ? 1 : 0) | (b < 0 ? 1 : 0) | (a > most ? 1 : 0) | (b > most ? 1 : 0));
   }
   return turns != 0;
 }
+
+#pragma GCC pop_options
 
 }  // namespace
 
