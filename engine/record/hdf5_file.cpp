@@ -64,8 +64,10 @@ std::string trimmed(const char* data, std::size_t length) { return {data, strnle
 
 }  // namespace
 
-Hdf5File::Hdf5File(std::string path, std::int64_t id) : path_(std::move(path)), id_(id), flushed_(std::chrono::steady_clock::now()) {}
-Hdf5File::Hdf5File(Hdf5File&& other) noexcept : path_(std::move(other.path_)), id_(std::exchange(other.id_, -1)), flushed_(other.flushed_) {}
+Hdf5File::Hdf5File(std::string path, std::int64_t id)
+    : path_(std::move(path)), id_(id), flushed_(std::chrono::steady_clock::now()) {}
+Hdf5File::Hdf5File(Hdf5File&& other) noexcept
+    : path_(std::move(other.path_)), id_(std::exchange(other.id_, -1)), flushed_(other.flushed_) {}
 
 Hdf5File::~Hdf5File() {
   if (id_ >= 0) H5Fclose(id_);
@@ -79,7 +81,8 @@ Hdf5File Hdf5File::create(const std::string& path, bool replace) {
   silence();
   Hdf5File file(path, -1);
   std::error_code ignored;
-  if (!replace && std::filesystem::exists(path, ignored)) file.fail("exists already", "give another --out, or --force to replace it");
+  if (!replace && std::filesystem::exists(path, ignored))
+    file.fail("exists already", "give another --out, or --force to replace it");
   const auto folder = std::filesystem::path(path).parent_path();
   if (!folder.empty() && !std::filesystem::is_directory(folder, ignored)) {
     file.fail("the folder " + folder.string() + " is not there", "make it, or give another --out");
@@ -96,9 +99,11 @@ Hdf5File Hdf5File::create(const std::string& path, bool replace) {
   cache.flash_incr_mode = H5C_flash_incr__off;
   cache.decr_mode = H5C_decr__off;
   cache.evictions_enabled = false;
-  if (H5Pset_mdc_config(access, &cache) < 0) file.fail("HDF5 takes no cache settings", "this is a fault of the program");
+  if (H5Pset_mdc_config(access, &cache) < 0)
+    file.fail("HDF5 takes no cache settings", "this is a fault of the program");
   file.id_ = H5Fcreate(path.c_str(), H5F_ACC_TRUNC, H5P_DEFAULT, access);
-  if (file.id_ < 0) file.fail("cannot be written", "check the folder's permissions and that no other program has it open");
+  if (file.id_ < 0)
+    file.fail("cannot be written", "check the folder's permissions and that no other program has it open");
   return file;
 }
 
@@ -107,7 +112,8 @@ Hdf5File Hdf5File::open(const std::string& path) {
   Hdf5File file(path, -1);
   std::error_code ignored;
   if (!std::filesystem::exists(path, ignored)) file.fail("there is no such file", "check the name");
-  if (H5Fis_hdf5(path.c_str()) <= 0) file.fail("is not an HDF5 file", "give a record that couplet has written");
+  if (H5Fis_hdf5(path.c_str()) <= 0)
+    file.fail("is not an HDF5 file", "give a record that couplet has written");
   file.id_ = H5Fopen(path.c_str(), H5F_ACC_RDONLY, H5P_DEFAULT);
   if (file.id_ < 0) file.fail("cannot be opened", "it is damaged, or another program is writing it");
   return file;
@@ -130,8 +136,11 @@ void Hdf5File::numbers(const std::string& name, const std::vector<double>& value
   const hsize_t count = values.size();
   const Id space(H5Screate_simple(1, &count, nullptr), H5Sclose);
   {
-    const Id made(H5Dcreate2(id_, name.c_str(), H5T_IEEE_F64LE, space, parents(), dataset_settings(), H5P_DEFAULT), H5Dclose);
-    if (!made.good() || (count > 0 && H5Dwrite(made, H5T_NATIVE_DOUBLE, H5S_ALL, H5S_ALL, H5P_DEFAULT, values.data()) < 0)) {
+    const Id made(
+        H5Dcreate2(id_, name.c_str(), H5T_IEEE_F64LE, space, parents(), dataset_settings(), H5P_DEFAULT),
+        H5Dclose);
+    if (!made.good() ||
+        (count > 0 && H5Dwrite(made, H5T_NATIVE_DOUBLE, H5S_ALL, H5S_ALL, H5P_DEFAULT, values.data()) < 0)) {
       fail("cannot take " + name, "check that the disk is not full");
     }
   }
@@ -139,16 +148,20 @@ void Hdf5File::numbers(const std::string& name, const std::vector<double>& value
   attribute(name, "label", label);
 }
 
-void Hdf5File::texts(const std::string& name, const std::vector<std::string>& values, const std::string& label) {
+void Hdf5File::texts(const std::string& name, const std::vector<std::string>& values,
+                     const std::string& label) {
   std::size_t length = 1;
   for (const auto& v : values) length = std::max(length, v.size());
   std::string packed(length * values.size(), '\0');
-  for (std::size_t i = 0; i < values.size(); ++i) std::copy(values[i].begin(), values[i].end(), packed.begin() + i * length);
+  for (std::size_t i = 0; i < values.size(); ++i)
+    std::copy(values[i].begin(), values[i].end(), packed.begin() + i * length);
   const hsize_t count = values.size();
   const Id space(H5Screate_simple(1, &count, nullptr), H5Sclose), type = text_type(length);
   {
-    const Id made(H5Dcreate2(id_, name.c_str(), type, space, parents(), dataset_settings(), H5P_DEFAULT), H5Dclose);
-    if (!made.good() || (count > 0 && H5Dwrite(made, type, H5S_ALL, H5S_ALL, H5P_DEFAULT, packed.data()) < 0)) {
+    const Id made(H5Dcreate2(id_, name.c_str(), type, space, parents(), dataset_settings(), H5P_DEFAULT),
+                  H5Dclose);
+    if (!made.good() ||
+        (count > 0 && H5Dwrite(made, type, H5S_ALL, H5S_ALL, H5P_DEFAULT, packed.data()) < 0)) {
       fail("cannot take " + name, "check that the disk is not full");
     }
   }
@@ -160,7 +173,8 @@ void Hdf5File::text(const std::string& name, const std::string& value, const std
   std::string padded = value;
   padded.resize(std::max<std::size_t>(value.size(), 1));
   {
-    const Id made(H5Dcreate2(id_, name.c_str(), type, space, parents(), dataset_settings(), H5P_DEFAULT), H5Dclose);
+    const Id made(H5Dcreate2(id_, name.c_str(), type, space, parents(), dataset_settings(), H5P_DEFAULT),
+                  H5Dclose);
     if (!made.good() || H5Dwrite(made, type, H5S_ALL, H5S_ALL, H5P_DEFAULT, padded.data()) < 0) {
       fail("cannot take " + name, "check that the disk is not full");
     }
@@ -170,26 +184,32 @@ void Hdf5File::text(const std::string& name, const std::string& value, const std
 
 void Hdf5File::attribute(const std::string& object, const std::string& name, const std::string& value) {
   // Of variable length: the form in which readers hand attributes out as text.
-  const Id on(H5Oopen(id_, object.c_str(), H5P_DEFAULT), H5Oclose), space(H5Screate(H5S_SCALAR), H5Sclose), type = text_type(H5T_VARIABLE);
+  const Id on(H5Oopen(id_, object.c_str(), H5P_DEFAULT), H5Oclose), space(H5Screate(H5S_SCALAR), H5Sclose),
+      type = text_type(H5T_VARIABLE);
   const Id made(H5Acreate2(on, name.c_str(), type, space, H5P_DEFAULT, H5P_DEFAULT), H5Aclose);
   const char* data = value.c_str();
-  if (!made.good() || H5Awrite(made, type, &data) < 0) fail("cannot take " + name + " of " + object, "check that the disk is not full");
+  if (!made.good() || H5Awrite(made, type, &data) < 0)
+    fail("cannot take " + name + " of " + object, "check that the disk is not full");
 }
 
 void Hdf5File::attribute(const std::string& object, const std::string& name, double value) {
   const Id on(H5Oopen(id_, object.c_str(), H5P_DEFAULT), H5Oclose), space(H5Screate(H5S_SCALAR), H5Sclose);
   const Id made(H5Acreate2(on, name.c_str(), H5T_IEEE_F64LE, space, H5P_DEFAULT, H5P_DEFAULT), H5Aclose);
-  if (!made.good() || H5Awrite(made, H5T_NATIVE_DOUBLE, &value) < 0) fail("cannot take " + name + " of " + object, "check that the disk is not full");
+  if (!made.good() || H5Awrite(made, H5T_NATIVE_DOUBLE, &value) < 0)
+    fail("cannot take " + name + " of " + object, "check that the disk is not full");
 }
 
 void Hdf5File::make_scale(const std::string& dataset, const std::string& name) {
   const Id set(H5Dopen2(id_, dataset.c_str(), H5P_DEFAULT), H5Dclose);
-  if (H5DSset_scale(set, name.c_str()) < 0) fail("cannot make an axis of " + dataset, "check that the disk is not full");
+  if (H5DSset_scale(set, name.c_str()) < 0)
+    fail("cannot make an axis of " + dataset, "check that the disk is not full");
 }
 
 void Hdf5File::axis(const std::string& dataset, const std::string& scale) {
-  const Id set(H5Dopen2(id_, dataset.c_str(), H5P_DEFAULT), H5Dclose), along(H5Dopen2(id_, scale.c_str(), H5P_DEFAULT), H5Dclose);
-  if (H5DSattach_scale(set, along, 0) < 0) fail("cannot give " + dataset + " its axis", "check that the disk is not full");
+  const Id set(H5Dopen2(id_, dataset.c_str(), H5P_DEFAULT), H5Dclose),
+      along(H5Dopen2(id_, scale.c_str(), H5P_DEFAULT), H5Dclose);
+  if (H5DSattach_scale(set, along, 0) < 0)
+    fail("cannot give " + dataset + " its axis", "check that the disk is not full");
 }
 
 std::size_t Hdf5File::rows(const std::string& name) const {
@@ -214,10 +234,13 @@ std::vector<std::string> Hdf5File::texts(const std::string& name) const {
   const Id set(has(name) ? H5Dopen2(id_, name.c_str(), H5P_DEFAULT) : -1, H5Dclose);
   if (!set.good()) fail("has no " + name, "give a record that couplet has written");
   const Id space(H5Dget_space(set), H5Sclose), type(H5Dget_type(set), H5Tclose);
-  const std::size_t length = H5Tget_size(type), count = std::max<hssize_t>(H5Sget_simple_extent_npoints(space), 0);
-  if (H5Tget_class(type) != H5T_STRING || H5Tis_variable_str(type) > 0) fail(name + " is not a text of ours", "give a record that couplet has written");
+  const std::size_t length = H5Tget_size(type),
+                    count = std::max<hssize_t>(H5Sget_simple_extent_npoints(space), 0);
+  if (H5Tget_class(type) != H5T_STRING || H5Tis_variable_str(type) > 0)
+    fail(name + " is not a text of ours", "give a record that couplet has written");
   std::string packed(length * count, '\0');
-  if (count > 0 && H5Dread(set, type, H5S_ALL, H5S_ALL, H5P_DEFAULT, packed.data()) < 0) fail("cannot read " + name, "the file is damaged: march again");
+  if (count > 0 && H5Dread(set, type, H5S_ALL, H5S_ALL, H5P_DEFAULT, packed.data()) < 0)
+    fail("cannot read " + name, "the file is damaged: march again");
   std::vector<std::string> values;
   for (std::size_t i = 0; i < count; ++i) values.push_back(trimmed(packed.data() + i * length, length));
   return values;
@@ -229,9 +252,12 @@ std::string Hdf5File::text(const std::string& name) const {
 }
 
 double Hdf5File::number_attribute(const std::string& object, const std::string& name) const {
-  const Id set(has(object) ? H5Aopen_by_name(id_, object.c_str(), name.c_str(), H5P_DEFAULT, H5P_DEFAULT) : -1, H5Aclose);
+  const Id set(
+      has(object) ? H5Aopen_by_name(id_, object.c_str(), name.c_str(), H5P_DEFAULT, H5P_DEFAULT) : -1,
+      H5Aclose);
   double value = 0;
-  if (!set.good() || H5Aread(set, H5T_NATIVE_DOUBLE, &value) < 0) fail("has no " + name + " of " + object, "give a record that couplet has written");
+  if (!set.good() || H5Aread(set, H5T_NATIVE_DOUBLE, &value) < 0)
+    fail("has no " + name + " of " + object, "give a record that couplet has written");
   return value;
 }
 
@@ -273,7 +299,9 @@ std::int64_t Hdf5File::create_column(const std::string& name, Number type, int c
   H5Pset_fill_time(settings, H5D_FILL_TIME_NEVER);
   // Chunks come whole and once: a cache would only hold memory.
   H5Pset_chunk_cache(access, 0, 0, 0);
-  const hid_t stored = type == Number::real ? H5T_IEEE_F64LE : type == Number::single ? H5T_IEEE_F32LE : H5T_STD_I32LE;
+  const hid_t stored = type == Number::real     ? H5T_IEEE_F64LE
+                       : type == Number::single ? H5T_IEEE_F32LE
+                                                : H5T_STD_I32LE;
   Id made(H5Dcreate2(id_, name.c_str(), stored, space, parents(), settings, access), H5Dclose);
   if (!made.good()) fail("cannot take " + name, "check that the disk is not full");
   if (!unit.empty()) attribute(name, "unit", unit);
@@ -281,12 +309,15 @@ std::int64_t Hdf5File::create_column(const std::string& name, Number type, int c
   return made.release();
 }
 
-void Hdf5File::write_rows(std::int64_t dataset, Number type, std::uint64_t at, std::uint64_t count, const void* data) {
+void Hdf5File::write_rows(std::int64_t dataset, Number type, std::uint64_t at, std::uint64_t count,
+                          const void* data) {
   const hsize_t extent = at + count, start = at, rows = count;
   bool good = H5Dset_extent(dataset, &extent) >= 0;
   const Id file_space(H5Dget_space(dataset), H5Sclose), memory(H5Screate_simple(1, &rows, nullptr), H5Sclose);
   good = good && H5Sselect_hyperslab(file_space, H5S_SELECT_SET, &start, nullptr, &rows, nullptr) >= 0;
-  const hid_t held = type == Number::real ? H5T_NATIVE_DOUBLE : type == Number::single ? H5T_NATIVE_FLOAT : H5T_NATIVE_INT32;
+  const hid_t held = type == Number::real     ? H5T_NATIVE_DOUBLE
+                     : type == Number::single ? H5T_NATIVE_FLOAT
+                                              : H5T_NATIVE_INT32;
   if (!good || H5Dwrite(dataset, held, memory, file_space, H5P_DEFAULT, data) < 0) {
     fail("cannot take more", "check that the disk is not full; what was flushed before can be read");
   }
@@ -295,15 +326,22 @@ void Hdf5File::write_rows(std::int64_t dataset, Number type, std::uint64_t at, s
 void Hdf5File::close_column(std::int64_t dataset) { H5Dclose(dataset); }
 
 template <class T>
-Column<T>::Column(Hdf5File& file, const std::string& name, int chunk, const std::string& unit, const std::string& label)
+Column<T>::Column(Hdf5File& file, const std::string& name, int chunk, const std::string& unit,
+                  const std::string& label)
     : file_(&file), held_(chunk) {
-  constexpr auto type = std::is_same_v<T, double> ? Hdf5File::Number::real : std::is_same_v<T, float> ? Hdf5File::Number::single : Hdf5File::Number::index;
+  constexpr auto type = std::is_same_v<T, double>  ? Hdf5File::Number::real
+                        : std::is_same_v<T, float> ? Hdf5File::Number::single
+                                                   : Hdf5File::Number::index;
   id_ = file.create_column(name, type, chunk, unit, label);
 }
 
 template <class T>
 Column<T>::Column(Column&& other) noexcept
-    : file_(other.file_), id_(std::exchange(other.id_, -1)), held_(std::move(other.held_)), count_(other.count_), written_(other.written_) {}
+    : file_(other.file_),
+      id_(std::exchange(other.id_, -1)),
+      held_(std::move(other.held_)),
+      count_(other.count_),
+      written_(other.written_) {}
 
 template <class T>
 Column<T>::~Column() {
@@ -312,7 +350,9 @@ Column<T>::~Column() {
 
 template <class T>
 void Column<T>::write_held() {
-  constexpr auto type = std::is_same_v<T, double> ? Hdf5File::Number::real : std::is_same_v<T, float> ? Hdf5File::Number::single : Hdf5File::Number::index;
+  constexpr auto type = std::is_same_v<T, double>  ? Hdf5File::Number::real
+                        : std::is_same_v<T, float> ? Hdf5File::Number::single
+                                                   : Hdf5File::Number::index;
   file_->write_rows(id_, type, written_, count_, held_.data());
   written_ += static_cast<std::uint64_t>(count_);
   count_ = 0;

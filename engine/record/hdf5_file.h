@@ -1,12 +1,14 @@
 // SPDX-License-Identifier: MIT
 // An HDF5 file, written so that a killed program leaves it readable up to the last flush, and read back.
 //
-// How that is reached: the file keeps the plain (earliest) format, which carries no "open for writing" mark; metadata
-// reaches the disk at a flush only; a chunk is written once, whole, and never moved, so that nothing that an earlier
-// flush points to is ever overwritten. A kill inside a flush itself (a millisecond in each second) is not guarded
-// against. No times are stored and places in the file do not depend on flushes: the same data give the same bytes.
+// How that is reached: the file keeps the plain (earliest) format, which carries no "open for writing" mark;
+// metadata reaches the disk at a flush only; a chunk is written once, whole, and never moved, so that nothing
+// that an earlier flush points to is ever overwritten. A kill inside a flush itself (a millisecond in each
+// second) is not guarded against. No times are stored and places in the file do not depend on flushes: the
+// same data give the same bytes.
 //
-// This is the only file that sees HDF5's C interface. Paths use '/' between groups; parents are made as needed.
+// This is the only file that sees HDF5's C interface. Paths use '/' between groups; parents are made as
+// needed.
 #pragma once
 
 #include <chrono>
@@ -38,7 +40,8 @@ class Hdf5File {
 
   // Whole datasets and attributes. Texts are UTF-8 of fixed length.
   void group(const std::string& name);
-  void numbers(const std::string& name, const std::vector<double>& values, const std::string& unit, const std::string& label);
+  void numbers(const std::string& name, const std::vector<double>& values, const std::string& unit,
+               const std::string& label);
   void texts(const std::string& name, const std::vector<std::string>& values, const std::string& label);
   void text(const std::string& name, const std::string& value, const std::string& label);
   void attribute(const std::string& object, const std::string& name, const std::string& value);
@@ -65,7 +68,8 @@ class Hdf5File {
   friend class Column;
   Hdf5File(std::string path, std::int64_t id);
   enum class Number { real, single, index };
-  std::int64_t create_column(const std::string& name, Number type, int chunk, const std::string& unit, const std::string& label);
+  std::int64_t create_column(const std::string& name, Number type, int chunk, const std::string& unit,
+                             const std::string& label);
   void write_rows(std::int64_t dataset, Number type, std::uint64_t at, std::uint64_t count, const void* data);
   static void close_column(std::int64_t dataset);
   [[noreturn]] void fail(const std::string& what, const std::string& remedy) const;
@@ -81,7 +85,8 @@ class Hdf5File {
 template <class T>
 class Column {
  public:
-  Column(Hdf5File& file, const std::string& name, int chunk, const std::string& unit, const std::string& label);
+  Column(Hdf5File& file, const std::string& name, int chunk, const std::string& unit,
+         const std::string& label);
   Column(Column&& other) noexcept;
   Column(const Column&) = delete;
   Column& operator=(const Column&) = delete;

@@ -7,12 +7,15 @@
 namespace couplet {
 namespace {
 
-std::optional<double> unless_missing(double value) { return std::isnan(value) ? std::nullopt : std::optional<double>(value); }
+std::optional<double> unless_missing(double value) {
+  return std::isnan(value) ? std::nullopt : std::optional<double>(value);
+}
 
 }  // namespace
 
 RecordReader::RecordReader(const std::string& path) : file_(Hdf5File::open(path)) {
-  if (!file_.has("/netlist/text")) throw RecordError(path + ": is no record of couplet; give the file that a run has written");
+  if (!file_.has("/netlist/text"))
+    throw RecordError(path + ": is no record of couplet; give the file that a run has written");
   if (!file_.has("/signals/key")) return;
   const auto names = file_.texts("/signals/name"), units = file_.texts("/signals/unit");
   keys_ = file_.texts("/signals/key");
@@ -20,7 +23,8 @@ RecordReader::RecordReader(const std::string& path) : file_(Hdf5File::open(path)
   std::vector<std::string> full = {"/full/time"}, periods = {"/periods/start", "/periods/duration"};
   for (const auto& key : keys_) {
     full.push_back("/full/" + key);
-    for (const char* which : {"minimum/", "maximum/", "mean/"}) periods.push_back(std::string("/periods/") + which + key);
+    for (const char* which : {"minimum/", "maximum/", "mean/"})
+      periods.push_back(std::string("/periods/") + which + key);
   }
   full_rows_ = shortest(full);
   period_rows_ = shortest(periods);
@@ -46,7 +50,8 @@ std::vector<int> RecordReader::indices(const std::string& name, std::size_t rows
 bool RecordReader::finished() const { return file_.has("/program/sentence"); }
 
 RecordReader::Netlist RecordReader::netlist() const {
-  return {file_.text("/netlist/file"), file_.text("/netlist/sha256"), file_.text("/netlist/text"), file_.text("/netlist/title")};
+  return {file_.text("/netlist/file"), file_.text("/netlist/sha256"), file_.text("/netlist/text"),
+          file_.text("/netlist/title")};
 }
 
 RecordReader::Program RecordReader::program() const {
@@ -72,8 +77,12 @@ int RecordReader::signal(const std::string& name) const {
   return -1;
 }
 
-std::vector<double> RecordReader::full_time() const { return signals_.empty() ? std::vector<double>() : column("/full/time", full_rows_); }
-std::vector<double> RecordReader::full(int signal) const { return column("/full/" + keys_.at(signal), full_rows_); }
+std::vector<double> RecordReader::full_time() const {
+  return signals_.empty() ? std::vector<double>() : column("/full/time", full_rows_);
+}
+std::vector<double> RecordReader::full(int signal) const {
+  return column("/full/" + keys_.at(signal), full_rows_);
+}
 
 std::vector<std::size_t> RecordReader::stretches() const {
   std::vector<std::size_t> rows;
@@ -101,9 +110,11 @@ RecordReader::Events RecordReader::events() const {
   Events e;
   if (signals_.empty()) return e;
   const std::size_t rows = shortest({"/events/time", "/events/kind", "/events/name", "/events/state"});
-  e.kinds = file_.texts("/events/kinds"), e.names = file_.texts("/events/names"), e.states = file_.texts("/events/states");
+  e.kinds = file_.texts("/events/kinds"), e.names = file_.texts("/events/names"),
+  e.states = file_.texts("/events/states");
   e.time = column("/events/time", rows);
-  e.kind = indices("/events/kind", rows), e.name = indices("/events/name", rows), e.state = indices("/events/state", rows);
+  e.kind = indices("/events/kind", rows), e.name = indices("/events/name", rows),
+  e.state = indices("/events/state", rows);
   return e;
 }
 
@@ -122,15 +133,18 @@ Figures RecordReader::figures() const {
   if (!file_.has("/figures/when")) return figures;
   const auto names = file_.texts("/figures/name"), units = file_.texts("/figures/unit");
   const auto values = file_.numbers("/figures/value"), when = file_.numbers("/figures/when");
-  for (std::size_t i = 0; i < names.size(); ++i) figures.set(names[i], values[i], units[i], unless_missing(when[i]));
+  for (std::size_t i = 0; i < names.size(); ++i)
+    figures.set(names[i], values[i], units[i], unless_missing(when[i]));
   return figures;
 }
 
 std::vector<Verdict> RecordReader::verdicts() const {
   std::vector<Verdict> verdicts;
   if (!file_.has("/verdicts/when")) return verdicts;
-  const auto names = file_.texts("/verdicts/name"), figures = file_.texts("/verdicts/figure"), units = file_.texts("/verdicts/unit");
-  const auto status = file_.texts("/verdicts/status"), why = file_.texts("/verdicts/why"), source = file_.texts("/verdicts/source");
+  const auto names = file_.texts("/verdicts/name"), figures = file_.texts("/verdicts/figure"),
+             units = file_.texts("/verdicts/unit");
+  const auto status = file_.texts("/verdicts/status"), why = file_.texts("/verdicts/why"),
+             source = file_.texts("/verdicts/source");
   const auto value = file_.numbers("/verdicts/value"), at_least = file_.numbers("/verdicts/at_least");
   const auto at_most = file_.numbers("/verdicts/at_most"), margin = file_.numbers("/verdicts/margin");
   const auto percent = file_.numbers("/verdicts/margin_percent"), when = file_.numbers("/verdicts/when");
@@ -141,7 +155,8 @@ std::vector<Verdict> RecordReader::verdicts() const {
       if (status_word(s) == status[i]) v.status = s;
     }
     v.value = value[i], v.margin = margin[i], v.margin_percent = percent[i];
-    v.at_least = unless_missing(at_least[i]), v.at_most = unless_missing(at_most[i]), v.when = unless_missing(when[i]);
+    v.at_least = unless_missing(at_least[i]), v.at_most = unless_missing(at_most[i]),
+    v.when = unless_missing(when[i]);
     verdicts.push_back(std::move(v));
   }
   return verdicts;

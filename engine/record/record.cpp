@@ -32,13 +32,14 @@ std::vector<std::string> all_states(const Sheet& sheet) {
 
 struct RecordWriter::Columns {
   std::unique_ptr<Column<double>> full_time, period_start, period_duration, event_time, region_time;
-  std::unique_ptr<Column<std::int32_t>> stretches, event_kind, event_name, event_state, region_branch, region_state;
+  std::unique_ptr<Column<std::int32_t>> stretches, event_kind, event_name, event_state, region_branch,
+      region_state;
   std::vector<Column<double>> full;
   std::vector<Column<float>> minimum, maximum, mean;
 };
 
-RecordWriter::RecordWriter(const std::string& path, const Design& design, const std::vector<std::string>& options,
-                           const std::string& version, bool replace)
+RecordWriter::RecordWriter(const std::string& path, const Design& design,
+                           const std::vector<std::string>& options, const std::string& version, bool replace)
     : file_(Hdf5File::create(path, replace)) {
   file_.text("/netlist/text", design.text, "the netlist as it was read");
   file_.text("/netlist/file", design.file, "its file");
@@ -55,22 +56,26 @@ void RecordWriter::begin(const Sheet& sheet, const std::vector<Signal>& signals)
   columns_ = std::make_unique<Columns>();
   Columns& c = *columns_;
   states_ = all_states(sheet);
-  const auto real = [&](const std::string& name, int chunk, const std::string& unit, const std::string& label) {
+  const auto real = [&](const std::string& name, int chunk, const std::string& unit,
+                        const std::string& label) {
     return std::make_unique<Column<double>>(file_, name, chunk, unit, label);
   };
   const auto index = [&](const std::string& name, int chunk, const std::string& label) {
     return std::make_unique<Column<std::int32_t>>(file_, name, chunk, "", label);
   };
   std::vector<std::string> names, units, keys;
-  for (const auto& s : signals) names.push_back(s.name), units.push_back(s.unit), keys.push_back(key_of(s.name));
+  for (const auto& s : signals)
+    names.push_back(s.name), units.push_back(s.unit), keys.push_back(key_of(s.name));
   file_.texts("/signals/name", names, "name of each signal");
   file_.texts("/signals/unit", units, "unit of each signal");
-  file_.texts("/signals/key", keys, "dataset of each signal in /full, /periods/minimum, /periods/maximum, /periods/mean");
+  file_.texts("/signals/key", keys,
+              "dataset of each signal in /full, /periods/minimum, /periods/maximum, /periods/mean");
 
   c.full_time = real("/full/time", full_chunk, "s", "time");
   c.stretches = index("/full/stretches", 1, "row at which each unbroken stretch of detail begins");
   c.period_start = real("/periods/start", period_chunk, "s", "start of the period");
-  c.period_duration = real("/periods/duration", period_chunk, "s", "duration of the period; the last one may be cut short by the end of the march");
+  c.period_duration = real("/periods/duration", period_chunk, "s",
+                           "duration of the period; the last one may be cut short by the end of the march");
   file_.make_scale("/full/time", "time");
   file_.make_scale("/periods/start", "start of the period");
   const auto summary = [&](std::vector<Column<float>>& columns, const std::string& which, std::size_t i) {
@@ -105,7 +110,9 @@ void RecordWriter::begin(const Sheet& sheet, const std::vector<Signal>& signals)
   file_.flush();
 }
 
-void RecordWriter::new_stretch() { columns_->stretches->append(static_cast<std::int32_t>(columns_->full_time->rows())); }
+void RecordWriter::new_stretch() {
+  columns_->stretches->append(static_cast<std::int32_t>(columns_->full_time->rows()));
+}
 
 void RecordWriter::full(double time, const double* values) {
   Columns& c = *columns_;
@@ -114,7 +121,8 @@ void RecordWriter::full(double time, const double* values) {
   if (c.full_time->rows() % full_chunk == 0) file_.flush_if_due();
 }
 
-void RecordWriter::period(double start, double duration, const double* minimum, const double* maximum, const double* mean) {
+void RecordWriter::period(double start, double duration, const double* minimum, const double* maximum,
+                          const double* mean) {
   Columns& c = *columns_;
   c.period_start->append(start);
   c.period_duration->append(duration);
@@ -150,7 +158,8 @@ void RecordWriter::figures(const Figures& figures) {
   std::vector<std::string> names, units;
   std::vector<double> values, when;
   for (const auto& f : figures.all()) {
-    names.push_back(f.name), units.push_back(f.unit), values.push_back(f.value), when.push_back(f.when.value_or(none));
+    names.push_back(f.name), units.push_back(f.unit), values.push_back(f.value),
+        when.push_back(f.when.value_or(none));
   }
   file_.texts("/figures/name", names, "name of each figure");
   file_.texts("/figures/unit", units, "unit of each value");
@@ -163,7 +172,8 @@ void RecordWriter::verdicts(const std::vector<Verdict>& verdicts) {
   std::vector<std::string> names, figures, units, status, why, source;
   std::vector<double> value, at_least, at_most, margin, percent, when;
   for (const auto& v : verdicts) {
-    names.push_back(v.name), figures.push_back(v.figure), units.push_back(v.unit), status.push_back(status_word(v.status));
+    names.push_back(v.name), figures.push_back(v.figure), units.push_back(v.unit),
+        status.push_back(status_word(v.status));
     why.push_back(v.why), source.push_back(v.source), value.push_back(v.value);
     at_least.push_back(v.at_least.value_or(none)), at_most.push_back(v.at_most.value_or(none));
     margin.push_back(v.margin), percent.push_back(v.margin_percent), when.push_back(v.when.value_or(none));
@@ -199,8 +209,11 @@ void RecordWriter::report(const MarchReport& report) {
 void RecordWriter::close() {
   if (columns_) {
     Columns& c = *columns_;
-    for (auto* column : {&c.full_time, &c.period_start, &c.period_duration, &c.event_time, &c.region_time}) (*column)->end();
-    for (auto* column : {&c.stretches, &c.event_kind, &c.event_name, &c.event_state, &c.region_branch, &c.region_state}) (*column)->end();
+    for (auto* column : {&c.full_time, &c.period_start, &c.period_duration, &c.event_time, &c.region_time})
+      (*column)->end();
+    for (auto* column :
+         {&c.stretches, &c.event_kind, &c.event_name, &c.event_state, &c.region_branch, &c.region_state})
+      (*column)->end();
     for (auto& column : c.full) column.end();
     for (auto* columns : {&c.minimum, &c.maximum, &c.mean}) {
       for (auto& column : *columns) column.end();

@@ -1,18 +1,18 @@
 // SPDX-License-Identifier: MIT
 // The record of a run: an HDF5 file with everything needed to look again.
 //
-//   /program            version, options, sentence of why the march ended, counts and seconds (attributes and texts)
-//   /netlist            file, sha256, text, title
-//   /full               detail: time, one dataset a signal, `stretches` (row at which each unbroken stretch begins)
-//   /periods            start, duration, and minimum/SIGNAL, maximum/SIGNAL, mean/SIGNAL (single precision)
-//   /events             in the stretches of detail: time, kind, name, state (indices into kinds, names, states)
-//   /regions            in the stretches of detail: time, branch, state: from then on the branch is in that state; a
+//   /program            version, options, sentence of why the march ended, counts and seconds (attributes and
+//   texts) /netlist            file, sha256, text, title /full               detail: time, one dataset a
+//   signal, `stretches` (row at which each unbroken stretch begins) /periods            start, duration, and
+//   minimum/SIGNAL, maximum/SIGNAL, mean/SIGNAL (single precision) /events             in the stretches of
+//   detail: time, kind, name, state (indices into kinds, names, states) /regions            in the stretches
+//   of detail: time, branch, state: from then on the branch is in that state; a
 //                       stretch begins with one row for each branch that has several
 //   /figures            name, value, unit, when
 //   /verdicts           name, figure, status, value, limits, margin, why, source
 //
-// Every dataset of numbers has `unit` (where it has one) and `label` attributes; signals have their time as dimension
-// scale. In names of datasets '/' is written '_'.
+// Every dataset of numbers has `unit` (where it has one) and `label` attributes; signals have their time as
+// dimension scale. In names of datasets '/' is written '_'.
 #pragma once
 
 #include <memory>
@@ -32,18 +32,21 @@ struct Signal {
 
 class RecordWriter {
  public:
-  /// Makes the file with /netlist and /program. `options` are the command line, word by word. An existing file is kept
-  /// (RecordError) unless `replace`.
-  RecordWriter(const std::string& path, const Design& design, const std::vector<std::string>& options, const std::string& version, bool replace = false);
+  /// Makes the file with /netlist and /program. `options` are the command line, word by word. An existing
+  /// file is kept (RecordError) unless `replace`.
+  RecordWriter(const std::string& path, const Design& design, const std::vector<std::string>& options,
+               const std::string& version, bool replace = false);
   ~RecordWriter();
 
   /// Makes the growing datasets; once, before any of the following.
   void begin(const Sheet& sheet, const std::vector<Signal>& signals);
   /// The next row of full detail does not continue the last one.
   void new_stretch();
-  /// One row of full detail; `values` by signal. Times do not decrease; two rows at one time are the sides of a jump.
+  /// One row of full detail; `values` by signal. Times do not decrease; two rows at one time are the sides of
+  /// a jump.
   void full(double time, const double* values);
-  void period(double start, double duration, const double* minimum, const double* maximum, const double* mean);
+  void period(double start, double duration, const double* minimum, const double* maximum,
+              const double* mean);
   /// `name`: index of a part, or number of parts + index of a probe, or -1; `state` as by state_index, or -1.
   void event(double time, Event::Kind kind, int name, int state);
   void region(double time, int branch, int state);
@@ -52,7 +55,8 @@ class RecordWriter {
   void figures(const Figures& figures);
   void verdicts(const std::vector<Verdict>& verdicts);
   void report(const MarchReport& report);
-  /// Writes what is held and closes the file. A writer destroyed without it leaves the file as at the last flush.
+  /// Writes what is held and closes the file. A writer destroyed without it leaves the file as at the last
+  /// flush.
   void close();
   const std::string& path() const { return file_.path(); }
   Hdf5File& file() { return file_; }
@@ -66,8 +70,8 @@ class RecordWriter {
   std::vector<std::string> states_;
 };
 
-/// Reads a record, also one of a killed run (then finished() is false, and all columns of a group are cut to the
-/// shortest). Throws RecordError.
+/// Reads a record, also one of a killed run (then finished() is false, and all columns of a group are cut to
+/// the shortest). Throws RecordError.
 class RecordReader {
  public:
   explicit RecordReader(const std::string& path);
@@ -78,7 +82,8 @@ class RecordReader {
   struct Program {
     std::string version, sentence;
     std::vector<std::string> options;
-    double steps = 0, refused = 0, events = 0, commands = 0, corners = 0, topologies = 0, seconds = 0, seconds_building = 0;
+    double steps = 0, refused = 0, events = 0, commands = 0, corners = 0, topologies = 0, seconds = 0,
+           seconds_building = 0;
   };
   struct Periods {
     std::vector<double> start, duration;  // s

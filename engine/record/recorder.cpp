@@ -11,12 +11,12 @@ namespace {
 
 constexpr double infinity = std::numeric_limits<double>::infinity();
 constexpr double most_curvature = 0.05, most_third = 0.01, most_weight = 0.002;  // see recorder.h
-constexpr int deepest = 40;               // halvings of a span: beyond a picosecond in a second
-constexpr long settling_spans = 1000;     // ranges are renewed at each of the first ones, then once a period
-constexpr double same_instant = 1e-14;     // of the time
-constexpr double silence = 8;             // periods after which a silent probe is helped out
-constexpr double most_change = 16;        // of the period's length against the expected one, for point spacing
-constexpr double roundoff_range = 1e-9;   // of the largest signal of the same unit: ranges below are noise
+constexpr int deepest = 40;              // halvings of a span: beyond a picosecond in a second
+constexpr long settling_spans = 1000;    // ranges are renewed at each of the first ones, then once a period
+constexpr double same_instant = 1e-14;   // of the time
+constexpr double silence = 8;            // periods after which a silent probe is helped out
+constexpr double most_change = 16;       // of the period's length against the expected one, for point spacing
+constexpr double roundoff_range = 1e-9;  // of the largest signal of the same unit: ranges below are noise
 constexpr std::size_t most_pieces = 1 << 15, most_happenings = 1 << 16;
 
 }  // namespace
@@ -38,8 +38,10 @@ std::vector<int> choose_outputs(const Circuit& circuit, const std::vector<std::s
       continue;
     }
     std::string known;
-    for (int row = 0; row < circuit.outputs(); ++row) known += (row ? ", \"" : "\"") + circuit.output_name(row) + "\"";
-    complaints += fmt::format("{}there is no signal \"{}\"; give one of {}", complaints.empty() ? "" : "\n", name, known);
+    for (int row = 0; row < circuit.outputs(); ++row)
+      known += (row ? ", \"" : "\"") + circuit.output_name(row) + "\"";
+    complaints += fmt::format("{}there is no signal \"{}\"; give one of {}", complaints.empty() ? "" : "\n",
+                              name, known);
   }
   if (!complaints.empty()) throw InputError(complaints);
   return chosen;
@@ -53,9 +55,16 @@ void Recorder::Held::clear() {
 }
 
 Recorder::Recorder(const Circuit& circuit, RecordWriter& writer, const RecorderSettings& settings)
-    : writer_(writer), settings_(settings), outputs_(choose_outputs(circuit, settings.signals)),
-      count_(static_cast<int>(outputs_.size())), stride_(padded(count_)), last_time_(-infinity), period_(settings.period),
-      detail_left_(settings.start), written_until_(-infinity), last_point_(-infinity) {
+    : writer_(writer),
+      settings_(settings),
+      outputs_(choose_outputs(circuit, settings.signals)),
+      count_(static_cast<int>(outputs_.size())),
+      stride_(padded(count_)),
+      last_time_(-infinity),
+      period_(settings.period),
+      detail_left_(settings.start),
+      written_until_(-infinity),
+      last_point_(-infinity) {
   if (!(settings.period > 0)) throw std::logic_error("a recorder needs a period");
   std::vector<Signal> signals;
   for (int row : outputs_) {
@@ -122,58 +131,69 @@ void Recorder::span(const Span& span) {
 
 namespace {
 
-// The two loops that run over every signal at every span. Signals are padded to whole vectors; padding is zero.
-// Flags are numbers, so that the compiler keeps to one vector width.
+// The two loops that run over every signal at every span. Signals are padded to whole vectors; padding is
+// zero. Comparisons become vectors only where the compiler need not fear that they trap (nobody here asks for
+// traps); functions of the library would not be inlined under that option.
+#pragma GCC push_options
+#pragma GCC optimize("no-trapping-math")
+
 struct Bounds {
   const double *range, *low, *high;
 };
 
 COUPLET_WIDE
-bool cubic_serves(int stride, double h, double weight, const double* at0, const double* at1, const Bounds& bounds) {
+bool cubic_serves(int stride, double h, double weight, const double* at0, const double* at1,
+                  const Bounds& bounds) {
   const double *slope0 = at0 + stride, *slope1 = at1 + stride;
-  double coarse = 0;
+  const double *range = bounds.range, *low = bounds.low, *high = bounds.high;
+  long long coarse = 0;
   for (int i = 0; i < stride; ++i) {
-    const double rise = at1[i] - at0[i];
-    const double room = bounds.range[i] > std::abs(rise) ? bounds.range[i] : std::abs(rise);
-    const double curvature = 0.5 * h * std::abs(slope1[i] - slope0[i]);
-    const double third = std::abs(0.5 * h * (slope0[i] + slope1[i]) - rise);
-    const double reach = 0.25 * h * (std::abs(slope0[i]) + std::abs(slope1[i]));
-    const double top = (at0[i] > at1[i] ? at0[i] : at1[i]) + reach, bottom = (at0[i] < at1[i] ? at0[i] : at1[i]) - reach;
-    const double bent = (curvature > most_curvature * room ? 1.0 : 0.0) + (third > most_third * room ? 1.0 : 0.0);
-    const double leaves = (top > bounds.high[i] ? 1.0 : 0.0) + (bottom < bounds.low[i] ? 1.0 : 0.0);
-    const double here = bent * leaves + (curvature * weight > room ? 1.0 : 0.0);
-    coarse = coarse > here ? coarse : here;
+    const double rise = at1[i] - at0[i], size = __builtin_fabs(rise);
+    const double room = range[i] > size ? range[i] : size;
+    const double curvature = 0.5 * h * __builtin_fabs(slope1[i] - slope0[i]);
+    const double third = __builtin_fabs(0.5 * h * (slope0[i] + slope1[i]) - rise);
+    const double reach = 0.25 * h * (__builtin_fabs(slope0[i]) + __builtin_fabs(slope1[i]));
+    const double top = (at0[i] > at1[i] ? at0[i] : at1[i]) + reach,
+                 bottom = (at0[i] < at1[i] ? at0[i] : at1[i]) - reach;
+    const long long bent = (curvature > most_curvature * room ? 1 : 0) | (third > most_third * room ? 1 : 0);
+    const long long leaves = (top > high[i] ? 1 : 0) | (bottom < low[i] ? 1 : 0);
+    coarse |= (bent & leaves) | (curvature * weight > room ? 1 : 0);
   }
   return coarse == 0;
 }
 
-/// Takes the ends and the integral in; true where some cubic turns in between.
+/// Takes the ends and the integral in; true where some cubic turns in between and may leave the range so far.
 COUPLET_WIDE
-bool gather_ends(int stride, double h, const double* at0, const double* at1, double* low, double* high, double* sum) {
+bool gather_ends(int stride, double h, const double* at0, const double* at1, double* __restrict low,
+                 double* __restrict high, double* __restrict sum) {
   const double *slope0 = at0 + stride, *slope1 = at1 + stride;
   const double half = 0.5 * h, twelfth = h * h / 12;
-  double turns = 0;
+  long long turns = 0;
   for (int i = 0; i < stride; ++i) {
     const double bottom = at0[i] < at1[i] ? at0[i] : at1[i], top = at0[i] > at1[i] ? at0[i] : at1[i];
-    low[i] = low[i] < bottom ? low[i] : bottom;
-    high[i] = high[i] > top ? high[i] : top;
+    const double lowest = low[i] < bottom ? low[i] : bottom, highest = high[i] > top ? high[i] : top;
+    low[i] = lowest;
+    high[i] = highest;
     sum[i] += half * (at0[i] + at1[i]) + twelfth * (slope0[i] - slope1[i]);
-    // A cubic rises or falls throughout where both slopes point along the rise and are at most three times it.
+    // A cubic rises or falls throughout where both slopes point along the rise and are at most three times
+    // it.
     const double rise = at1[i] - at0[i], most = 3 * rise * rise;
     const double a = slope0[i] * h * rise, b = slope1[i] * h * rise;
-    const double reach = 0.25 * h * (std::abs(slope0[i]) + std::abs(slope1[i]));
-    const double leaves = (top + reach > high[i] ? 1.0 : 0.0) + (bottom - reach < low[i] ? 1.0 : 0.0);
-    const double here = leaves * ((a < 0 ? 1.0 : 0.0) + (b < 0 ? 1.0 : 0.0) + (a > most ? 1.0 : 0.0) + (b > most ? 1.0 : 0.0));
-    turns = turns > here ? turns : here;
+    const double reach = 0.25 * h * (__builtin_fabs(slope0[i]) + __builtin_fabs(slope1[i]));
+    const long long leaves = (top + reach > highest ? 1 : 0) | (bottom - reach < lowest ? 1 : 0);
+    turns |= leaves & ((a < 0 ? 1 : 0) | (b < 0 ? 1 : 0) | (a > most ? 1 : 0) | (b > most ? 1 : 0));
   }
   return turns != 0;
 }
+
+#pragma GCC pop_options
 
 }  // namespace
 
 /// Whether the cubic is good enough for what it may change (see recorder.h).
 bool Recorder::resolved(double h, const double* at0, const double* at1) const {
-  return cubic_serves(stride_, h, h / (most_weight * period_), at0, at1, {range_.data(), low_.data(), high_.data()});
+  return cubic_serves(stride_, h, h / (most_weight * period_), at0, at1,
+                      {range_.data(), low_.data(), high_.data()});
 }
 
 void Recorder::gather(double h, const double* at0, const double* at1) {
@@ -201,10 +221,11 @@ void Recorder::gather_turns(double h, const double* at0, const double* at1) {
   }
 }
 
-void Recorder::measure_part(const Span& span, const Buffer& mine, double from, double to, const double* at0, const double* at1,
-                            int depth) {
+void Recorder::measure_part(const Span& span, const Buffer& mine, double from, double to, const double* at0,
+                            const double* at1, int depth) {
   const double middle = 0.5 * (from + to);
-  if (depth == deepest || resolved(to - from, at0, at1) || !(middle > from && middle < to)) return gather(to - from, at0, at1);
+  if (depth == deepest || resolved(to - from, at0, at1) || !(middle > from && middle < to))
+    return gather(to - from, at0, at1);
   span.between->at(middle, x_.data());
   double* half = halves_[depth].data();
   product(mine.data(), 2 * stride_, n_, x_.data(), half);
@@ -265,15 +286,18 @@ void Recorder::close_period(double time, Closing closing) {
   detail_left_ = std::max(detail_left_, 0);
 }
 
-/// Ranges of the march so far. Those below the round-off of larger signals of the same unit are not worth halvings.
+/// Ranges of the march so far. Those below the round-off of larger signals of the same unit are not worth
+/// halvings.
 void Recorder::renew_ranges() {
   double largest[2] = {0, 0};
   for (int i = 0; i < count_; ++i) {
     range_low_[i] = std::min(range_low_[i], low_[i]);
     range_high_[i] = std::max(range_high_[i], high_[i]);
-    largest[is_volts_[i]] = std::max({largest[is_volts_[i]], std::abs(range_low_[i]), std::abs(range_high_[i])});
+    largest[is_volts_[i]] =
+        std::max({largest[is_volts_[i]], std::abs(range_low_[i]), std::abs(range_high_[i])});
   }
-  for (int i = 0; i < count_; ++i) range_[i] = std::max(range_high_[i] - range_low_[i], roundoff_range * largest[is_volts_[i]]);
+  for (int i = 0; i < count_; ++i)
+    range_[i] = std::max(range_high_[i] - range_low_[i], roundoff_range * largest[is_volts_[i]]);
 }
 
 void Recorder::event(const Event& event) {
@@ -296,13 +320,16 @@ void Recorder::event(const Event& event) {
 void Recorder::before_span(const Topology* topology) {
   for (; settled_ < now_.happenings.size(); ++settled_) {
     auto& happening = now_.happenings[settled_];
-    if (topology && happening.branch >= 0) happening.state = state_names_[happening.branch][topology->cells[happening.branch]];
+    if (topology && happening.branch >= 0)
+      happening.state = state_names_[happening.branch][topology->cells[happening.branch]];
   }
   if (probe_rose_) close_period(probe_time_, Closing::probe);
   probe_rose_ = false;
 }
 
-void Recorder::mark(double time) { marks_.insert(std::upper_bound(marks_.begin(), marks_.end(), time), time); }
+void Recorder::mark(double time) {
+  marks_.insert(std::upper_bound(marks_.begin(), marks_.end(), time), time);
+}
 
 void Recorder::follow(const Circuit& circuit) {
   before_span(nullptr);
@@ -317,8 +344,11 @@ void Recorder::finish() {
   close_period(last_time_, Closing::clock);
 }
 
-/// Marches keep time to more than its last digit: a span's start and duration need not add up to the next one's start.
-bool Recorder::continues(const Span& span) const { return std::abs(span.start - last_time_) <= same_instant * std::abs(span.start); }
+/// Marches keep time to more than its last digit: a span's start and duration need not add up to the next
+/// one's start.
+bool Recorder::continues(const Span& span) const {
+  return std::abs(span.start - last_time_) <= same_instant * std::abs(span.start);
+}
 
 void Recorder::hold(const Span& span) {
   if (!marks_.empty() && span.start >= marks_.front()) {
@@ -344,14 +374,16 @@ void Recorder::hold(const Span& span) {
     states.insert(states.end(), span.x0, span.x0 + n_);
     states.resize(states.size() + stride - n_, 0.0);
   }
-  now_.pieces.push_back({span.topology->id, span.start, span.duration, span.start + span.duration, states.size() / stride - 1, false});
+  now_.pieces.push_back({span.topology->id, span.start, span.duration, span.start + span.duration,
+                         states.size() / stride - 1, false});
   states.insert(states.end(), span.x1, span.x1 + n_);
   states.resize(states.size() + stride - n_, 0.0);
 }
 
 /// Writes the last `periods` whole periods that are held, and the one under way.
 void Recorder::write_held(int periods) {
-  const std::size_t whole = before_.periods.size() + now_.periods.size(), wanted = static_cast<std::size_t>(std::max(periods, 0));
+  const std::size_t whole = before_.periods.size() + now_.periods.size(),
+                    wanted = static_cast<std::size_t>(std::max(periods, 0));
   const std::size_t skip = whole > wanted ? whole - wanted : 0, in_before = before_.periods.size();
   if (skip < in_before || skip == 0) write(before_, skip == 0 ? 0 : before_.periods[skip - 1]);
   write(now_, skip > in_before ? now_.periods[skip - in_before - 1] : 0);
@@ -375,7 +407,8 @@ void Recorder::write(const Held& held, std::size_t first) {
     }
     const bool changed = written_topology_ != piece.topology;
     if (changed) write_regions(piece.topology, piece.start);
-    if (changed || (end - last_point_ > spacing && piece.start > last_point_)) point(topology, piece.start, x0);
+    if (changed || (end - last_point_ > spacing && piece.start > last_point_))
+      point(topology, piece.start, x0);
     if (h > spacing) {
       const int steps = static_cast<int>(std::ceil(h / spacing));
       const Flow& flow = evaluator_->flow(topology);
@@ -386,13 +419,14 @@ void Recorder::write(const Held& held, std::size_t first) {
         point(topology, piece.start + h * i / steps, x_.data());
       }
     }
-    const bool ends = p + 1 == held.pieces.size() || piece.event_after || held.pieces[p + 1].topology != piece.topology ||
-                      held.pieces[p + 1].start != end;
+    const bool ends = p + 1 == held.pieces.size() || piece.event_after ||
+                      held.pieces[p + 1].topology != piece.topology || held.pieces[p + 1].start != end;
     if (ends) point(topology, end, x1);
     written_until_ = end;
   }
   for (const auto& happening : held.happenings) {
-    if (happening.time >= held.pieces[first].start) writer_.event(happening.time, happening.kind, happening.name, happening.state);
+    if (happening.time >= held.pieces[first].start)
+      writer_.event(happening.time, happening.kind, happening.name, happening.state);
   }
 }
 

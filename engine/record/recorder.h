@@ -1,17 +1,18 @@
 // SPDX-License-Identifier: MIT
-// Watches a march and writes its record: each signal's minimum, maximum and mean per period throughout, and full detail
-// at the start, around each scheduled change and over the last periods, in bounded memory.
+// Watches a march and writes its record: each signal's minimum, maximum and mean per period throughout, and
+// full detail at the start, around each scheduled change and over the last periods, in bounded memory.
 //
-// A signal is an output of the circuit, w = C x. Its slope is C A x, so between two known states it is taken as the cubic
-// through values and slopes (Hermite). Where a span is too long for that (more than 5 % of the signal's range of
-// curvature, |s1 - s0| h / 2, or 1 % of the third difference, |(s0 + s1) h / 2 - (w1 - w0)|) and the signal might leave
-// the range that the period has had so far, the span is halved on the march's own interpolant, until it is not. On a
-// sine wave of amplitude a that leaves an error of at most a (w h)^4 / 384 = 1e-4 a in an extreme.
-// Means integrate the same cubic: h (w0 + w1) / 2 + h^2 (s0 - s1) / 12 (the corrected trapezoid); a span that weighs
-// too much in its period (h |s1 - s0| h / 2 above 0.2 % of range x period) is halved too.
+// A signal is an output of the circuit, w = C x. Its slope is C A x, so between two known states it is taken
+// as the cubic through values and slopes (Hermite). Where a span is too long for that (more than 5 % of the
+// signal's range of curvature, |s1 - s0| h / 2, or 1 % of the third difference, |(s0 + s1) h / 2 - (w1 -
+// w0)|) and the signal might leave the range that the period has had so far, the span is halved on the
+// march's own interpolant, until it is not. On a sine wave of amplitude a that leaves an error of at most a
+// (w h)^4 / 384 = 1e-4 a in an extreme. Means integrate the same cubic: h (w0 + w1) / 2 + h^2 (s0 - s1) / 12
+// (the corrected trapezoid); a span that weighs too much in its period (h |s1 - s0| h / 2 above 0.2 % of
+// range x period) is halved too.
 //
-// Detail is not computed while the march runs: the states at the ends of spans are kept for two times `last` periods,
-// and only what is to be written is evaluated, exactly, by the flow of its topology.
+// Detail is not computed while the march runs: the states at the ends of spans are kept for two times `last`
+// periods, and only what is to be written is evaluated, exactly, by the flow of its topology.
 #pragma once
 
 #include <memory>
@@ -24,15 +25,17 @@
 namespace couplet {
 
 struct RecorderSettings {
-  int probe = -1;         // its rising crossings delimit the periods; -1: periods of fixed length
-  double period = 0;      // s; with a probe: what is expected. A probe silent for 8 of its last periods is helped out
-  int points = 64;        // per period of full detail, at least; every event has a point on either side besides
+  int probe = -1;  // its rising crossings delimit the periods; -1: periods of fixed length
+  double period =
+      0;  // s; with a probe: what is expected. A probe silent for 8 of its last periods is helped out
+  int points = 64;  // per period of full detail, at least; every event has a point on either side besides
   int start = 20, around = 20, last = 20;  // periods of full detail
-  bool all = false;       // full detail throughout
-  std::vector<std::string> signals;  // names as by Circuit::output_name; empty: all
+  bool all = false;                        // full detail throughout
+  std::vector<std::string> signals;        // names as by Circuit::output_name; empty: all
 };
 
-/// Signals of a circuit by name (empty: all outputs). Throws InputError with the nearest names where one is unknown.
+/// Signals of a circuit by name (empty: all outputs). Throws InputError with the nearest names where one is
+/// unknown.
 std::vector<int> choose_outputs(const Circuit& circuit, const std::vector<std::string>& names);
 
 class Recorder : public Observer {
@@ -42,11 +45,11 @@ class Recorder : public Observer {
 
   void span(const Span& span) override;
   void event(const Event& event) override;
-  /// A scheduled change falls on `time` (seconds of the march, not in the past): detail is kept around it. Spans are not
-  /// cut there, so the march should stop or have a corner at that time.
+  /// A scheduled change falls on `time` (seconds of the march, not in the past): detail is kept around it.
+  /// Spans are not cut there, so the march should stop or have a corner at that time.
   void mark(double time);
-  /// From the next span on another circuit of the same structure is marched (and marks this instant). The circuit
-  /// before must still be there.
+  /// From the next span on another circuit of the same structure is marched (and marks this instant). The
+  /// circuit before must still be there.
   void follow(const Circuit& circuit);
   /// Writes what is held: the last periods. Closes nothing.
   void finish();
@@ -57,7 +60,7 @@ class Recorder : public Observer {
     struct Piece {
       int topology;
       double start, duration, end;  // end: as the next piece or an event has it, to the last digit
-      std::size_t state;  // its x0 is states[state], its x1 the next one
+      std::size_t state;            // its x0 is states[state], its x1 the next one
       bool event_after;
     };
     struct Happening {
@@ -76,7 +79,8 @@ class Recorder : public Observer {
   void enter(const Circuit& circuit);
   const Buffer& rows(const Topology& topology);
   void measure(const Span& span, const Buffer& rows);
-  void measure_part(const Span& span, const Buffer& rows, double from, double to, const double* at0, const double* at1, int depth);
+  void measure_part(const Span& span, const Buffer& rows, double from, double to, const double* at0,
+                    const double* at1, int depth);
   bool resolved(double h, const double* at0, const double* at1) const;
   void gather(double h, const double* at0, const double* at1);
   void gather_turns(double h, const double* at0, const double* at1);

@@ -16,7 +16,8 @@ namespace couplet::test {
 class Scratch {
  public:
   explicit Scratch(const std::string& name)
-      : path_((std::filesystem::temp_directory_path() / ("couplet-" + std::to_string(getpid()) + "-" + name)).string()) {}
+      : path_((std::filesystem::temp_directory_path() / ("couplet-" + std::to_string(getpid()) + "-" + name))
+                  .string()) {}
   ~Scratch() { std::filesystem::remove(path_); }
   const std::string& path() const { return path_; }
 
@@ -41,17 +42,20 @@ inline void sine_source(Sheet& sheet, const std::string& node, double amplitude,
   sheet.emf(part, sheet.node(node), 0, Form().wave(sheet.waveform(wave)));
 }
 
-inline void resistor(Sheet& sheet, const std::string& name, const std::string& from, const std::string& to, double ohms) {
+inline void resistor(Sheet& sheet, const std::string& name, const std::string& from, const std::string& to,
+                     double ohms) {
   const Node a = sheet.node(from), b = sheet.node(to);
   sheet.resistor(sheet.part(name, "resistor", a, b), a, b, ohms);
 }
 
-inline void capacitor(Sheet& sheet, const std::string& name, const std::string& from, const std::string& to, double farads) {
+inline void capacitor(Sheet& sheet, const std::string& name, const std::string& from, const std::string& to,
+                      double farads) {
   const Node a = sheet.node(from), b = sheet.node(to);
   sheet.capacitor(sheet.part(name, "capacitor", a, b), a, b, farads, 0);
 }
 
-inline void coil(Sheet& sheet, const std::string& name, const std::string& from, const std::string& to, double henries, double ohms) {
+inline void coil(Sheet& sheet, const std::string& name, const std::string& from, const std::string& to,
+                 double henries, double ohms) {
   const Node a = sheet.node(from), b = sheet.node(to);
   sheet.coil(sheet.part(name, "coil", a, b), a, b, henries, ohms, 0);
 }

@@ -2,10 +2,11 @@
 // The file: what is written comes back, also after a kill, also through another reader.
 #include "engine/record/record.h"
 
+#include <sys/wait.h>
+
 #include <csignal>
 #include <cstdlib>
 #include <fstream>
-#include <sys/wait.h>
 
 #include "tests/agrees.h"
 #include "tests/record/circuits.h"
@@ -41,7 +42,8 @@ bool rows_hold(const RecordReader& reader) {
     }
     for (std::size_t r = 0; r < periods.start.size(); ++r) {
       const double mean = value_of(static_cast<int>(r), s);
-      if (summary.mean[r] != mean || summary.minimum[r] != mean - 1 || summary.maximum[r] != mean + 1) return false;
+      if (summary.mean[r] != mean || summary.minimum[r] != mean - 1 || summary.maximum[r] != mean + 1)
+        return false;
     }
   }
   return true;
@@ -71,8 +73,10 @@ void write_whole(const std::string& path, bool often = false) {
   figures.set("frequency", 1e5, "Hz");
   writer.figures(figures);
   Verdict verdict;
-  verdict.name = "headroom", verdict.figure = "regulator.headroom", verdict.unit = "V", verdict.value = 0.5, verdict.at_least = 0.25;
-  verdict.status = Verdict::Status::not_met, verdict.margin = 0.25, verdict.margin_percent = 100, verdict.why = "dropout";
+  verdict.name = "headroom", verdict.figure = "regulator.headroom", verdict.unit = "V", verdict.value = 0.5,
+  verdict.at_least = 0.25;
+  verdict.status = Verdict::Status::not_met, verdict.margin = 0.25, verdict.margin_percent = 100,
+  verdict.why = "dropout";
   writer.verdicts({verdict});
   MarchReport report;
   report.sentence = "reached 1 s";
@@ -144,14 +148,17 @@ TEST_CASE("complaints about files say what to do") {
   };
   CHECK(complaint([&] { RecordWriter(file.path(), small_design(), {}, "0"); }) ==
         file.path() + ": exists already; give another --out, or --force to replace it");
-  CHECK(complaint([&] { RecordReader reader(file.path()); }) == file.path() + ": is not an HDF5 file; give a record that couplet has written");
-  CHECK(complaint([&] { RecordReader reader(file.path() + "x"); }) == file.path() + "x: there is no such file; check the name");
+  CHECK(complaint([&] { RecordReader reader(file.path()); }) ==
+        file.path() + ": is not an HDF5 file; give a record that couplet has written");
+  CHECK(complaint([&] { RecordReader reader(file.path() + "x"); }) ==
+        file.path() + "x: there is no such file; check the name");
   CHECK(complaint([&] { RecordWriter("/no/such/folder/a.h5", small_design(), {}, "0"); }) ==
         "/no/such/folder/a.h5: the folder /no/such/folder is not there; make it, or give another --out");
   { RecordWriter replaced(file.path(), small_design(), {}, "0", true); }
   CHECK_FALSE(RecordReader(file.path()).finished());
   Hdf5File::create(file.path(), true).text("/other", "x", "something else");
-  CHECK(complaint([&] { RecordReader reader(file.path()); }) == file.path() + ": is no record of couplet; give the file that a run has written");
+  CHECK(complaint([&] { RecordReader reader(file.path()); }) ==
+        file.path() + ": is no record of couplet; give the file that a run has written");
 }
 
 TEST_CASE("a killed run leaves a readable file up to the last flush") {
@@ -207,9 +214,10 @@ TEST_CASE("other readers of HDF5 read a record") {
       WARN("skipped: h5py is not installed (package python3-h5py)");
       return;
     }
-    const std::string text = output_of(
-        "/usr/bin/python3 -c \"import h5py; f = h5py.File('" + file.path() +
-        "'); d = f['full/current of choke']; print(d.attrs['unit'], d.dims[0][0].name, d[4095], d.dims[0][0][4095], f['netlist/title'][()].decode(), d.compression)\"");
+    const std::string text =
+        output_of("/usr/bin/python3 -c \"import h5py; f = h5py.File('" + file.path() +
+                  "'); d = f['full/current of choke']; print(d.attrs['unit'], d.dims[0][0].name, d[4095], "
+                  "d.dims[0][0][4095], f['netlist/title'][()].decode(), d.compression)\"");
     CHECK(text == "A /full/time 1024.75 4095.0 Bench gzip\n");
   }
 }
