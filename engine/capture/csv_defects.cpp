@@ -10,6 +10,7 @@
 #include <unsupported/Eigen/FFT>
 
 #include "engine/capture/csv_stages.h"
+#include "engine/capture/levels.h"
 
 namespace couplet::capture {
 namespace {
@@ -20,47 +21,6 @@ std::vector<double> finite(const std::vector<double>& values) {
   std::copy_if(values.begin(), values.end(), std::back_inserter(kept),
                [](double v) { return std::isfinite(v); });
   return kept;
-}
-
-/// Distance of the levels where the values lie on few of them; 0 where they do not repeat.
-double level_step(std::vector<double> values) {
-  const std::size_t n = values.size();
-  std::sort(values.begin(), values.end());
-  const double range = values.back() - values.front();
-  if (!(range > 0)) return 0;
-  double step = range;
-  std::size_t levels = 1;
-  for (std::size_t i = 1; i < n; ++i) {
-    const double gap = values[i] - values[i - 1];
-    if (gap <= 1e-6 * range) continue;
-    ++levels;
-    step = std::min(step, gap);
-  }
-  // Twelve bits at most, and on average two values a level.
-  return levels <= 4096 && 2 * levels <= n ? step : 0;
-}
-
-/// A flat end: runs of the extreme value too long for the neighbourhood. Near its top a sine spends at
-/// most 2.4 times as long in the last level as in the one below it (square roots of the distance to the top);
-/// clipping has no bound.
-bool flat_end(const std::vector<double>& values, double extreme, double step, double range) {
-  const double same = std::max(step / 2, 1e-6 * range);
-  const double band = std::max(step, 0.01 * range);
-  std::size_t at_end = 0;
-  std::size_t near = 0;
-  std::size_t run = 0;
-  std::size_t longest = 0;
-  for (const double value : values) {
-    const double distance = std::abs(value - extreme);
-    run = distance < same ? run + 1 : 0;
-    longest = std::max(longest, run);
-    if (distance < same) {
-      ++at_end;
-    } else if (distance < same + band) {
-      ++near;
-    }
-  }
-  return longest >= 3 && at_end >= 3 * near + 3;
 }
 
 /// Smallest m > 1 so that differences of the given order vanish except once every m rows; 1: none.
@@ -201,9 +161,10 @@ void find_defects(Capture& capture, const std::vector<std::size_t>& lines) {
     channel.high = *high;
     refuse_unit_jump(channel, lines);
     const double range = channel.high - channel.low;
-    channel.step = level_step(values);
-    channel.clipped_low = channel.clipped_low || flat_end(values, channel.low, channel.step, range);
-    channel.clipped_high = channel.clipped_high || flat_end(values, channel.high, channel.step, range);
+    const Levels levels = find_levels(values);
+    channel.step = levels.step;
+    channel.clipped_low = channel.clipped_low || levels.flat_low;
+    channel.clipped_high = channel.clipped_high || levels.flat_high;
     for (const auto& [clipped, word, at] : {std::tuple{channel.clipped_low, "bottom", channel.low},
                                             std::tuple{channel.clipped_high, "top", channel.high}}) {
       if (!clipped) continue;
