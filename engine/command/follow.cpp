@@ -2,6 +2,7 @@
 #include <fmt/format.h>
 
 #include "engine/command/commands.h"
+#include "engine/command/plots.h"
 #include "engine/quantity/quantity.h"
 #include "engine/study/follow.h"
 
@@ -69,6 +70,7 @@ int follow_command(const FollowCommand& options) {
     }
     for (const auto& m : path.marks) fmt::print("\n  at {} = {} ({}): {}\n", path.along, print_quantity(m.value, path.unit, 8), print_quantity(m.frequency, "Hz", 6), m.words);
   }
+  if (!path.points.empty() && !options.common.plot.empty()) write_text(options.common.plot, plot_path(path, design));
   if (!options.common.json.empty()) write_text(options.common.json, json_of(design, "follow", status, path.points.empty() ? Figures{} : path.points.back().figures, {}, path_json(path)));
   if (path.points.empty()) fmt::print(stderr, "{}: {}\n", design.file, path.sentence);
   return status;

@@ -4,6 +4,7 @@
 #include <cmath>
 
 #include "engine/command/commands.h"
+#include "engine/command/plots.h"
 #include "engine/quantity/quantity.h"
 #include "engine/study/steady_state.h"
 
@@ -88,6 +89,7 @@ int settle_command(const SettleCommand& options) {
       fmt::print("\nFound how: {}; {} laps, {:.2f} ms, figures {:.2f} ms\n", s.orbit.sentence, s.orbit.laps, 1e3 * s.orbit.seconds, 1e3 * s.seconds_figures);
     }
   }
+  if (answer && !options.common.plot.empty()) write_text(options.common.plot, plot_settle(s, design));
   if (!options.common.json.empty()) write_text(options.common.json, json_of(design, "settle", status, s.figures, s.verdicts, details_json(s)));
   if (!answer) fmt::print(stderr, "{}: {}\n", design.file, outcome_of(s));
   return status;

@@ -3,6 +3,7 @@
 
 #include "engine/command/commands.h"
 #include "engine/quantity/quantity.h"
+#include "engine/command/plots.h"
 #include "engine/record/recorder.h"
 #include "engine/study/start.h"
 #include "engine/study/steady_state.h"
@@ -69,6 +70,7 @@ std::vector<std::string> words_of(const StartCommand& options) {
 
 int start_command(const StartCommand& options) {
   const Design design = read_netlist(options.common.netlist, options.common.set);
+  if (!options.common.plot.empty() && options.common.out.empty()) throw InputError("--plot of a start is drawn from its record; give --out PATH too");
   StartOptions start;
   start.ida = options.common.march == "ida";
   start.march.relative = options.tolerance;
@@ -119,6 +121,7 @@ int start_command(const StartCommand& options) {
   const int status = !result.report.usable() ? status_unfinished : all_met(result.verdicts) ? status_met : status_not_met;
   if (!options.common.quiet && options.common.json != "-") print_summary(design, result, options.common);
   if (!options.common.json.empty()) write_text(options.common.json, json_of(design, "start", status, result.figures, result.verdicts, report_json(result)));
+  if (!options.common.plot.empty()) write_text(options.common.plot, plot_start(RecordReader(options.common.out), design));
   if (writer && !options.common.quiet && options.common.json != "-") fmt::print("\nRecord: {}\n", options.common.out);
   if (!result.report.usable()) fmt::print(stderr, "{}: {}\n", design.file, result.report.sentence);
   return status;

@@ -265,7 +265,7 @@ Path Follower::run() {
     current = next;
     two = true;
     tangent = (current.y - before.y).normalized();
-    if (next.steps <= 4) ds = std::min(ds * 1.6, 0.2);
+    if (next.steps <= 4) ds = std::min(ds * 1.6, 0.1);
   }
   if (path_.sentence.empty()) path_.sentence = fmt::format("stopped after {} points", path_.points.size());
   path_.seconds = now() - began;
