@@ -243,7 +243,10 @@ ExactMarch::Finding ExactMarch::locate(double h, Finding found) {
     if (high - low <= 0 && next == tau) break;
     tau = next;
   }
-  return {Outcome::unresolved, found.watch, 0, 2};
+  // The two ends differ by round-off only (rung products and series disagree about the sign): the event is at the far end.
+  attempt(high, -1);
+  found.root = high;
+  return found;
 }
 
 void ExactMarch::accept(double h) {

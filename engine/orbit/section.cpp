@@ -113,9 +113,9 @@ Section find_section(const Sheet& sheet, const std::string& wanted, double patie
     if (!(c.low < 0 && c.high > 0)) continue;
     const double balance = -c.low / c.high;
     if (balance < 0.25 || balance > 4) continue;
-    const double energy = c.weight * (c.high - c.low) * (c.high - c.low);
-    // A current of a coil beside its own capacitor swings as much; a clear lead is wanted to prefer it.
-    if (energy > most * 1.05) most = energy, best = &c;
+    // A coil's current swings as much as its capacitor's voltage; voltages are preferred, being what a probe sees.
+    const double energy = c.weight * (c.high - c.low) * (c.high - c.low) * (c.form.currents.empty() ? 1 : 0.25);
+    if (energy > most) most = energy, best = &c;
   }
   if (!best) {
     section.problem = fmt::format("nothing swings through zero within {:.4g} s from rest: no oscillation to take a period from", patience);
