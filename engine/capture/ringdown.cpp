@@ -6,6 +6,7 @@
 #include <algorithm>
 #include <boost/math/distributions/students_t.hpp>
 #include <cmath>
+#include <functional>
 #include <iterator>
 #include <limits>
 #include <numbers>
@@ -91,8 +92,8 @@ Levels levels_of(const std::vector<double>& value) {
   return finite.size() < 2 ? Levels{} : find_levels(finite);
 }
 
-/// Second largest distance from `offset` in each of some fifty pieces: an envelope that one spike does not
-/// move.
+/// The largest distances from `offset` in each of some fifty pieces, but for the largest eighth: an envelope
+/// that spikes do not move.
 struct Envelope {
   std::vector<double> time, height;
 };
@@ -102,19 +103,14 @@ Envelope envelope_of(const Samples& samples, double offset) {
   const std::size_t piece = std::max<std::size_t>(8, n / 50);
   Envelope envelope;
   for (std::size_t begin = 0; begin < n; begin += piece) {
-    double first = 0;
-    double second = 0;
+    std::vector<double> height;
     for (std::size_t i = begin; i < std::min(begin + piece, n); ++i) {
-      const double height = std::abs(samples.value[i] - offset);
-      if (height > first) {
-        second = first;
-        first = height;
-      } else {
-        second = std::max(second, height);
-      }
+      height.push_back(std::abs(samples.value[i] - offset));
     }
+    const auto at = height.begin() + static_cast<std::ptrdiff_t>(std::min(piece / 8, height.size() - 1));
+    std::nth_element(height.begin(), at, height.end(), std::greater<>());
     envelope.time.push_back(samples.time[begin]);
-    envelope.height.push_back(second);
+    envelope.height.push_back(*at);
   }
   return envelope;
 }
@@ -139,7 +135,8 @@ std::vector<Window> core_windows(const Fitter& fitter) {
     if (envelope.height[i] >= 0.75 * peak) near.push_back(i);
   }
   for (std::size_t i = near.back() + 1; !options.end && i < envelope.height.size(); ++i) {
-    if (envelope.height[i] < 0.2 * peak || envelope.height[i] < 5 * envelope.height[i - 1]) continue;
+    const double before = std::max(envelope.height[i - 1], envelope.height[i < 2 ? 0 : i - 2]);
+    if (envelope.height[i] < 0.2 * peak || envelope.height[i] < 5 * before) continue;
     end = envelope.time[i - 1];
     fitter.result.notes.push_back(fmt::format("excited again at {:.6g} s; fitted up to there", end));
     break;
