@@ -14,14 +14,36 @@ void write_diode(Sheet& sheet, int part, const std::string& name, Node anode, No
              {"conducts", 1, 1, Form().volt(anode, cathode, leak + 1 / law.on).add(-law.drop / law.on)}};
 }
 
+void write_clamp(Sheet& sheet, int part, const std::string& name, Node plus, Node minus,
+                 const ClampLaw& law) {
+  Branch& b = sheet.branch(part, name, plus, minus);
+  Condition over, under;
+  over.form.volt(plus, minus).add(-law.breakdown);
+  under.form.volt(plus, minus, -1).add(-law.backward);
+  b.conditions = {over, under};
+  const double leak = 1 / law.leakage, slope = 1 / law.slope;
+  b.cells = {{"blocks", 3, 0, Form().volt(plus, minus, leak)},
+             {"clamps", 1, 1, Form().volt(plus, minus, leak + slope).add(-slope * law.breakdown)},
+             {"clamps backward", 3, 2, Form().volt(plus, minus, leak + slope).add(slope * law.backward)}};
+}
+
 void write_switch(Sheet& sheet, int part, const std::string& name, Node from, Node to, const Command& command,
                   double on, double off) {
-  const int index = sheet.command(command);
-  Branch& b = sheet.branch(part, name, from, to);
   Condition commanded;
-  commanded.command = index;
+  commanded.command = sheet.command(command);
+  Branch& b = sheet.branch(part, name, from, to);
   b.conditions = {commanded};
   b.cells = {{"open", 1, 0, Form().volt(from, to, 1 / off)}, {"closed", 1, 1, Form().volt(from, to, 1 / on)}};
+}
+
+void write_draw(Sheet& sheet, int part, const std::string& name, Node from, Node to, double current,
+                double knee, std::pair<const char*, const char*> states) {
+  Branch& b = sheet.branch(part, name, from, to);
+  Condition full;
+  full.form.volt(from, to).add(-knee);
+  b.conditions = {full};
+  b.cells = {{states.first, 1, 0, Form().volt(from, to, current / knee)},
+             {states.second, 1, 1, Form().add(current)}};
 }
 
 void write_channel(Sheet& sheet, int part, const std::string& name, Node drain, Node gate, Node source,
@@ -46,6 +68,31 @@ void write_capacitor(Sheet& sheet, int part, Node from, Node to, double farads) 
   if (farads > 0) sheet.capacitor(part, from, to, farads, 0);
 }
 
+void write_fet(Sheet& sheet, int part, const std::string& name, Node drain, Node gate, Node source,
+               const Values& v) {
+  write_channel(sheet, part, name, drain, gate, source,
+                {v["threshold"], v["transconductance"], v["on_resistance"], v["leakage"]});
+  // Its leakage is the channel's.
+  write_diode(sheet, part, name + ".body", source, drain, {v["body_drop"], v["body_resistance"], never});
+  write_capacitor(sheet, part, gate, source, v["gate_source"]);
+  write_capacitor(sheet, part, gate, drain, v["gate_drain"]);
+  write_capacitor(sheet, part, drain, source, v["drain_source"]);
+}
+
+void write_leg(Sheet& sheet, const std::string& name, Node high, Node middle, Node low, const Values& v,
+               double phase) {
+  const auto half = [&](const std::string& piece, Node top, Node bottom, double at) {
+    const std::string full = name + "." + piece;
+    const int part = sheet.part(full, "switch", top, bottom);
+    write_switch(sheet, part, full, top, bottom, command_of(v, 0.5, at), v["on_resistance"],
+                 v["off_resistance"]);
+    write_diode(sheet, part, full + ".diode", bottom, top, {v["diode_drop"], v["diode_resistance"], never});
+    write_capacitor(sheet, part, top, bottom, v["output_capacitance"]);
+  };
+  half("upper", high, middle, phase);
+  half("lower", middle, low, phase + 0.5);
+}
+
 std::vector<Key> diode_keys() {
   return {
       {"forward_drop", "V", "voltage at which it begins to conduct", "0.4 V", 0, 1e3},
@@ -54,8 +101,6 @@ std::vector<Key> diode_keys() {
       {"capacitance", "F", "junction capacitance, taken as constant", "0 F", 0, 1},
   };
 }
-
-DiodeLaw diode_law(const Values& v) { return {v["forward_drop"], v["on_resistance"], v["leakage"]}; }
 
 std::vector<Key> fet_keys() {
   return {
@@ -71,18 +116,33 @@ std::vector<Key> fet_keys() {
   };
 }
 
-FetLaw fet_law(const Values& v) {
-  return {v["threshold"], v["transconductance"], v["on_resistance"], v["leakage"]};
+std::vector<Key> command_keys() {
+  return {
+      {"frequency", "Hz", "switching frequency", "", 1e-3, 1e12},
+      {"dead_time", "s", "delay of each turn-on", "0 s", 0, 1, false},
+      {"on_resistance", "ohm", "resistance while closed", "20 mohm", 1e-9, 1e6},
+      {"off_resistance", "ohm", "resistance while open", "1 Mohm", 1, 1e15},
+  };
 }
 
-void write_fet(Sheet& sheet, int part, const std::string& name, Node drain, Node gate, Node source,
-               const Values& v) {
-  write_channel(sheet, part, name, drain, gate, source, fet_law(v));
-  write_diode(sheet, part, name + ".body", source, drain,
-              {v["body_drop"], v["body_resistance"], v["leakage"]});
-  write_capacitor(sheet, part, gate, source, v["gate_source"]);
-  write_capacitor(sheet, part, gate, drain, v["gate_drain"]);
-  write_capacitor(sheet, part, drain, source, v["drain_source"]);
+std::vector<Key> leg_keys() {
+  return {
+      {"diode_drop", "V", "forward drop of the antiparallel diodes", "0.7 V", 0, 100},
+      {"diode_resistance", "ohm", "slope of the antiparallel diodes", "20 mohm", 1e-9, 1e6},
+      {"output_capacitance", "F", "capacitance across each switch", "200 pF", 0, 1},
+  };
+}
+
+DiodeLaw diode_law(const Values& v) { return {v["forward_drop"], v["on_resistance"], v["leakage"]}; }
+
+Command command_of(const Values& v, double duty, double phase) {
+  return {v["frequency"], duty, phase, v["dead_time"]};
+}
+
+std::string check_dead_time(const Values& v, double duty) {
+  if (v["dead_time"] > 0 && v["dead_time"] * v["frequency"] >= duty)
+    return "dead_time is longer than the on time; shorten it or lower the frequency";
+  return {};
 }
 
 std::vector<Rating> two_terminal_ratings() {
@@ -92,6 +152,12 @@ std::vector<Rating> two_terminal_ratings() {
       {"current_rms", "A", "current.rms", "effective current"},
       {"power", "W", "loss", "mean loss"},
   };
+}
+
+std::vector<Rating> ratings_of(const std::string& piece) {
+  auto ratings = two_terminal_ratings();
+  for (auto& r : ratings) r.of = piece;
+  return ratings;
 }
 
 std::vector<Key> joined(std::vector<Key> first, const std::vector<Key>& second) {

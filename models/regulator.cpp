@@ -1,12 +1,11 @@
 // SPDX-License-Identifier: MIT
 // Linear regulator: pass current i = clamp((min(set, v_in - dropout) - v_out) / resistance, 0, limit) while
 // enabled.
-#include "models/kinds.h"
 #include "models/pieces.h"
 
 namespace couplet {
 
-const PartKind regulator_kind = {
+extern const PartKind regulator_kind = {
     "regulator",
     "a linear regulator: set voltage, dropout, current limit, quiescent current, turn-on threshold",
     {{"input", "unregulated input"}, {"output", "regulated output"}, {"common", "ground pin"}},
@@ -20,8 +19,14 @@ const PartKind regulator_kind = {
     {{"input", "V", "voltage.peak", "absolute maximum input voltage"},
      {"current", "A", "current.peak", "largest input current"},
      {"power", "W", "loss", "mean loss"}},
-    "kind = \"regulator\"\ninput = \"rail\"\noutput = \"vout\"\ncommon = \"gnd\"\noutput_voltage = \"5 "
-    "V\"\ndropout = \"0.3 V\"",
+    R"(kind = "regulator"
+input = "rail"
+output = "vout"
+common = "gnd"
+output_voltage = "5 V"
+dropout = "0.3 V"
+turn_on = "6 V"
+turn_off = "5 V")",
     [](Sheet& sheet, const std::string& name, const Nodes& n, const Values& v) {
       const Node in = n.at("input"), out = n.at("output"), common = n.at("common");
       const int part = sheet.part(name, "regulator", in, common);
@@ -56,16 +61,10 @@ const PartKind regulator_kind = {
       b.cells.push_back({"limits", on | 0xF, on | 0x7, limited});
       b.cells.push_back({"drops out", on | 0x17, on | 0x13, dropped});
       b.cells.push_back({"limits", on | 0x17, on | 0x3, limited});
-      // Quiescent current: rises through zero with the input, constant above a tenth of the set voltage.
-      if (v["quiescent"] > 0) {
-        Branch& q = sheet.branch(part, name + ".quiescent", in, common);
-        const double knee = 0.1 * set;
-        Condition full;
-        full.form.volt(in, common).add(-knee);
-        q.conditions = {full};
-        q.cells = {{"starved", 1, 0, Form().volt(in, common, v["quiescent"] / knee)},
-                   {"full", 1, 1, Form().add(v["quiescent"])}};
-      }
+      // Rises through zero with the input, constant above a tenth of the set voltage.
+      if (v["quiescent"] > 0)
+        write_draw(sheet, part, name + ".quiescent", in, common, v["quiescent"], 0.1 * set,
+                   {"starved", "full"});
     },
     [](const Values& v) -> std::string {
       if (v["turn_on"] > 0 && v["turn_off"] >= v["turn_on"])
