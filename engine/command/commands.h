@@ -10,7 +10,7 @@ namespace couplet {
 
 struct StartCommand {
   CommonOptions common;
-  std::string duration, from = "rest", record = "default";
+  std::string duration, record = "default";
   double tolerance = 1e-6;
 };
 int start_command(const StartCommand& options);
@@ -25,6 +25,7 @@ struct FollowCommand {
   std::string along, from, to;
 };
 int follow_command(const FollowCommand& options);
+
 struct CoilCommand {
   std::string file;
   std::vector<std::string> set;

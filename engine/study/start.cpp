@@ -146,9 +146,7 @@ void StartRun::begin_stage(double time, bool first) {
   settings.keep_moments = true;
   if (design_.run.step_ceiling) settings.step_ceiling = *design_.run.step_ceiling;
   std::unique_ptr<March> march = options_.ida ? ida_march(*next, settings) : exact_march(*next, settings);
-  if (first && options_.from) {
-    state_ = *options_.from;
-  } else if (first) {
+  if (first) {
     state_ = march->stand(next->start_state(), 0);
   } else {
     const Eigen::VectorXd w = circuit_->topology(state_.cells).C * state_.x;

@@ -19,9 +19,6 @@ struct StartOptions {
   bool ida = false;
   MarchSettings march;
   double duration = 0;  // s; 0: the netlist's, or 800 natural periods
-  /// Start from these outputs w and this time's phase instead of from rest (a settled state); empty: from rest.
-  Eigen::VectorXd from_state;                           // xi
-  const MarchState* from = nullptr;                     // with bits, when it comes from an orbit
   Section section;                                      // already known; found here where words is empty
   std::function<void(double share)> progress;           // called now and then with the share done
   std::function<void(const Circuit&, double time)> on_circuit;  // a new circuit begins (start, scheduled change)
