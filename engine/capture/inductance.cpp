@@ -95,7 +95,7 @@ PartValue propagate(const Law& law, const std::vector<RingDownMode>& rings, cons
 }
 
 std::string problem_of(const KnownCapacitor& given) {
-  const auto bad = [](const Given& value) { return value.value < 0 || value.tolerance < 0; };
+  const auto bad = [](const Stated& value) { return value.value < 0 || value.tolerance < 0; };
   if (bad(given.capacitance) || bad(given.probe_capacitance) || bad(given.series_resistance) ||
       given.probe_resistance < 0) {
     return "capacitances, resistances and tolerances must not be negative";

@@ -11,17 +11,17 @@
 
 namespace couplet::capture {
 
-/// A given value and how far it may be off, in the value's unit.
-struct Given {
+/// A stated value and how far it may be off, in the value's unit.
+struct Stated {
   double value = 0, tolerance = 0;
 };
 
 /// The circuit around the coil: coil and series resistance in a loop with the capacitor; probe across the
 /// capacitor.
 struct KnownCapacitor {
-  Given capacitance;            // [F]
-  Given probe_capacitance;      // [F], adds to it
-  Given series_resistance;      // of capacitor, leads and switch [ohm], not the coil's
+  Stated capacitance;           // [F]
+  Stated probe_capacitance;     // [F], adds to it
+  Stated series_resistance;     // of capacitor, leads and switch [ohm], not the coil's
   double probe_resistance = 0;  // [ohm]; 0: none
 };
 

@@ -34,6 +34,16 @@ struct CoilCommand {
 };
 int coil_command(const CoilCommand& options);
 
+struct CaptureCommand {
+  std::string file, channel, time_unit, unit;
+  std::vector<std::string> probe, readings;
+  std::size_t modes = 1;
+  std::string from, to, capacitor, probe_capacitance, probe_resistance, series_resistance, closed;
+  std::string against, signal, shift, json;
+  bool offset = false, force = false, quiet = false;
+};
+int capture_command(const CaptureCommand& options);
+
 int parts_command(const std::string& kind);
 
 }  // namespace couplet

@@ -25,6 +25,31 @@ void add_common(CLI::App* command, CommonOptions& common) {
   command->add_flag("--verbose", common.verbose, "every part's figures, counts and times");
 }
 
+void add_capture(CLI::App* command, couplet::CaptureCommand& capture) {
+  command->add_option("CSV", capture.file, "the capture, as the oscilloscope wrote it");
+  command->add_option("--channel", capture.channel, "which channel, where the file holds several");
+  command->add_option("--time-unit", capture.time_unit, "unit of time where the file states none, like us");
+  command->add_option("--unit", capture.unit, "unit of the values where the file states none, like V");
+  command->add_option("--probe", capture.probe, "true factor of the probe: 10, or CHANNEL=10");
+  command->add_option("--modes", capture.modes, "how many oscillations ring at once")->check(CLI::Range(1, 4));
+  command->add_option("--from", capture.from, "start of the ring-down, with its unit; else it is searched");
+  command->add_option("--to", capture.to, "its end");
+  command->add_option("--capacitor", capture.capacitor, "the known capacitor, like \"47 nF +- 2 %\": gives inductance and resistance");
+  command->add_option("--probe-capacitance", capture.probe_capacitance, "adds to the capacitor, like \"12 pF +- 3 pF\"");
+  command->add_option("--probe-resistance", capture.probe_resistance, "across the capacitor, like \"10 Mohm\"");
+  command->add_option("--series-resistance", capture.series_resistance, "of capacitor and leads, not the coil's, like \"20 mohm +- 5 mohm\"");
+  command->add_option("--closed", capture.closed, "a second capture, with the other coil shorted: gives the coupling factor");
+  command->add_option("--reading", capture.readings, "NAME=\"VALUE +- ERROR\", as often as needed: open, short; aiding, opposing, first, second; first-voltage, second-voltage; low, high, first-alone, second-alone; first-quality, second-quality");
+  command->add_option("--against", capture.against, "a record: lay the capture over one of its signals");
+  command->add_option("--signal", capture.signal, "which one, like \"voltage of tank\"");
+  command->add_option("--shift", capture.shift, "add this to the capture's time instead of searching for it");
+  command->add_flag("--offset", capture.offset, "also take out a constant difference");
+  command->add_option("--json", capture.json, "figures as JSON to this path; - for standard output");
+  command->add_flag("--force", capture.force, "overwrite existing files");
+  command->add_flag("--quiet", capture.quiet, "no summary");
+  command->footer("Example: couplet capture ring.csv --capacitor \"47 nF +- 2 %\" --probe-capacitance \"12 pF +- 3 pF\"");
+}
+
 }  // namespace
 
 int main(int argc, char** argv) {
@@ -65,6 +90,10 @@ int main(int argc, char** argv) {
   coil_app->add_flag("--quiet", coil.quiet, "no summary");
   coil_app->footer("Example: couplet coil netlists/coils/tool_crib_pad.toml --set place.gap=\"3 mm\" --factor 0.3");
 
+  couplet::CaptureCommand capture;
+  auto* capture_app = app.add_subcommand("capture", "part values from bench captures and readings; or a capture over a record");
+  add_capture(capture_app, capture);
+
   std::string kind;
   auto* parts_app = app.add_subcommand("parts", "which kinds of parts there are, with keys, units and defaults");
   parts_app->add_option("KIND", kind, "show one kind in full");
@@ -81,6 +110,7 @@ int main(int argc, char** argv) {
     if (*settle_app) return couplet::settle_command(settle);
     if (*follow_app) return couplet::follow_command(follow);
     if (*coil_app) return couplet::coil_command(coil);
+    if (*capture_app) return couplet::capture_command(capture);
     if (*parts_app) return couplet::parts_command(kind);
   } catch (const couplet::InputError& error) {
     fmt::print(stderr, "{}\n", error.what());
