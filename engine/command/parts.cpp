@@ -35,14 +35,14 @@ int parts_command(const std::string& kind) {
     throw InputError(fmt::format("there is no kind of part \"{}\"{}", kind, nearest(kind, kinds)));
   }
   fmt::print("{}: {}\n\nterminals\n", found->kind, found->summary);
-  for (const auto& t : found->terminals) fmt::print("  {:<22}{}\n", t.name, t.help);
+  for (const auto& t : found->terminals) fmt::print("  {:<24}{}\n", t.name, t.help);
   fmt::print("\nkeys\n");
   for (const auto& k : found->keys) {
     const std::string fallback = k.fallback.empty() ? "required" : k.fallback == "-" ? "may be left out" : "default " + k.fallback;
-    fmt::print("  {:<22}{}\n  {:<22}{}; {}{}\n", k.name, k.help, "", fallback, range_of(k), k.toleranced && k.type == Key::Type::quantity ? "; may carry a tolerance" : "");
+    fmt::print("  {:<24}{}\n  {:<24}{}; {}{}\n", k.name, k.help, "", fallback, range_of(k), k.toleranced && k.type == Key::Type::quantity ? "; may carry a tolerance" : "");
   }
   fmt::print("\nratings (each becomes a limit)\n");
-  for (const auto& r : found->ratings) fmt::print("  {:<22}{} [{}]\n", r.name, r.help, r.unit);
+  for (const auto& r : found->ratings) fmt::print("  {:<24}{} [{}]\n", r.name, r.help, r.unit);
   fmt::print("\nexample\n  [parts.NAME]\n");
   std::string line;
   for (const char c : found->example + "\n") {
